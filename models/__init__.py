@@ -1,0 +1,1 @@
+"""Physics: true even if nobody ever optimized anything."""

@@ -1,0 +1,1 @@
+"""Closed-form interaction kernels, one module a lattice."""

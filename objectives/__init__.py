@@ -1,0 +1,1 @@
+"""Wanted behaviours: quantities, requirements, improvements; no algorithm is named here."""

@@ -1,0 +1,1 @@
+"""Search: patterns that meet the requires of a problem. Knows bilinear forms and conditions, nothing of magnets."""

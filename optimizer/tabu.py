@@ -1,0 +1,152 @@
+"""Tabu search on linear problems: many rounded starts walk at once, one flip or one facing pair of flips at a step.
+
+All forms are bilinear, so one table of slope changes (how a unit of each variable moves the slopes of all forms) makes
+every step exact and cheap: the effects of all flips are read from the slopes, and after the best allowed move values
+and slopes are updated, never recomputed. A facing pair reverses a cell of the base and the cell above it together:
+where both faces hold one texture, that is the move that changes it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from functools import cached_property
+from typing import Any, NamedTuple
+
+import jax
+import jax.numpy as jnp
+import numpy as np
+from numpy.typing import NDArray
+
+from .forms import ConditionForms
+from .scoring import score
+from .stopping import Budget
+
+Array = NDArray[np.float64]
+
+STARTS = 16
+"""Starts that walk together; always as many, so that nothing recompiles."""
+CHUNK = 250
+"""Steps between two looks at the budget."""
+LARGEST = 30_000_000
+"""Largest number of entries of the table of slope changes."""
+
+
+def affordable(forms: ConditionForms) -> bool:
+    """Does the table of slope changes fit?"""
+    return forms.constant.size * forms.layout.count**2 <= LARGEST
+
+
+class _Tables(NamedTuple):
+    """Arrays of the walk: slope changes (n, form, n), curvature (form, n), pairs (p, 2), coupling (form, p)."""
+
+    changes: jax.Array
+    curvature: jax.Array
+    pairs: jax.Array
+    coupling: jax.Array
+
+
+class _Walk(NamedTuple):
+    """State of one start: variables, values of the forms, their slopes, when each variable is free, the best so far."""
+
+    z: jax.Array
+    values: jax.Array
+    slopes: jax.Array
+    free: jax.Array
+    best: jax.Array
+    best_z: jax.Array
+    key: jax.Array
+
+
+class TabuSearch:
+    """Multi-start tabu search.
+
+    Attributes:
+        forms: Conditions and worth as bilinear forms.
+    """
+
+    def __init__(self, forms: ConditionForms) -> None:
+        self.forms = forms
+        n = forms.layout.count
+        changes = np.stack([forms.slope_change(k) for k in range(n)])
+        curvature = 0.5 * np.einsum("kfk->fk", changes)
+        pairs = forms.layout.facing()
+        coupling = changes[pairs[:, 0], :, pairs[:, 1]].T.reshape(len(forms.constant), len(pairs))
+        self._tables = _Tables(*(jnp.asarray(part) for part in (changes, curvature, pairs, coupling)))
+        self._longest = max(n // 12, 8)
+
+    def run(
+        self, starts: Array, seed: int, budget: Budget, steps: int, softness: Array, violation: Array
+    ) -> Array:
+        """Walk from rounded variables (``STARTS``, n) and return the best that each start met, (``STARTS``, n).
+
+        Args:
+            starts: Variables of -1 and +1.
+            seed: Seed of the tenures.
+            budget: Ends the walk early when it is used up.
+            steps: Moves of each start.
+            softness: Soft minimum of each start, shape (``STARTS``,); see ``scoring.score``.
+            violation: Price of a violation of each start, shape (``STARTS``,).
+        """
+        values = np.stack([self.forms.values(z) for z in starts])
+        slopes = np.stack([self.forms.slopes(z) for z in starts])
+        price = (jnp.asarray(softness), jnp.asarray(violation))
+        best = jax.vmap(self._score)(jnp.asarray(values), *price)
+        keys = jax.random.split(jax.random.key(seed), len(starts))
+        free = jnp.zeros(starts.shape, dtype=jnp.int64)
+        z = jnp.asarray(starts)
+        walk = _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, z, keys)
+        for first in range(0, steps, CHUNK):
+            if budget.reason() is not None or budget.left < len(starts):
+                break
+            walk = self._advance(self._tables, walk, *price, first + jnp.arange(CHUNK))
+            budget.spend(len(starts) * CHUNK)
+        return np.asarray(walk.best_z)
+
+    def _score(self, values: jax.Array, softness: jax.Array, violation: jax.Array) -> Any:
+        """Score of forms (..., form)."""
+        count = self.forms.counts.size
+        worth = values[..., -1] if self.forms.improves else None
+        return score(jnp, self.forms.counts, values[..., :count], worth, violation, softness)
+
+    @cached_property
+    def _advance(self) -> Callable[..., _Walk]:
+        n, longest = self.forms.layout.count, self._longest
+
+        def flip(tables: _Tables, walk: _Walk, variable: jax.Array, amount: jax.Array) -> _Walk:
+            """Move one variable by ``amount`` (-2 z to reverse it, 0 to leave it)."""
+            values = walk.values + amount * walk.slopes[:, variable] + amount**2 * tables.curvature[:, variable]
+            slopes = walk.slopes + amount * tables.changes[variable]
+            z = walk.z + jnp.where(jnp.arange(n) == variable, amount, 0.0)
+            return walk._replace(values=values, slopes=slopes, z=z)
+
+        def step(tables: _Tables, walk: _Walk, softness: jax.Array, violation: jax.Array, now: jax.Array) -> _Walk:
+            first, second = tables.pairs[:, 0], tables.pairs[:, 1]
+            single = -2.0 * walk.z * walk.slopes + 4.0 * tables.curvature
+            both = single[:, first] + single[:, second] + 4.0 * walk.z[first] * walk.z[second] * tables.coupling
+            after = walk.values[:, None] + jnp.concatenate([single, both], axis=1)
+            scores = self._score(after.T, softness, violation)
+            barred = walk.free > now
+            barred = jnp.concatenate([barred, barred[first] | barred[second]])
+            scores = jnp.where(barred & (scores <= walk.best), -jnp.inf, scores)
+            move = jnp.argmax(scores)
+            pair = tables.pairs[jnp.maximum(move - n, 0)] if len(self._tables.pairs) else jnp.zeros(2, dtype=jnp.int64)
+            joint = move >= n
+            i, j = jnp.where(joint, pair[0], move), pair[1]
+            key, draw = jax.random.split(walk.key)
+            tenure = jax.random.randint(draw, (2,), 4, longest + 1)
+            at = jnp.arange(n)
+            free = jnp.where(at == i, now + tenure[0], walk.free)
+            free = jnp.where((at == j) & joint, now + tenure[1], free)
+            walk = flip(tables, walk, i, -2.0 * walk.z[i])
+            walk = flip(tables, walk, j, jnp.where(joint, -2.0 * walk.z[j], 0.0))
+            reached = self._score(walk.values, softness, violation)
+            better = reached > walk.best
+            best_z = jnp.where(better, walk.z, walk.best_z)
+            return walk._replace(free=free, key=key, best=jnp.where(better, reached, walk.best), best_z=best_z)
+
+        many = jax.vmap(step, in_axes=(None, 0, 0, 0, None))
+
+        def advance(tables: _Tables, walk: _Walk, softness: jax.Array, violation: jax.Array, now: jax.Array) -> _Walk:
+            return jax.lax.scan(lambda w, at: (many(tables, w, softness, violation, at), None), walk, now)[0]
+
+        return jax.jit(advance)

@@ -1,0 +1,1 @@
+"""What a user or a pipeline touches: spec, execution, archive, command line, report."""

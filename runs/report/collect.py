@@ -1,0 +1,107 @@
+"""Gathers what a report shows beside its run: obvious patterns, bounds on the curve, stray-field maps."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ...models.part import Part
+from ...models.patterns import checker, stripes, uniform
+from ...models.units import to_si
+from ...objectives.problem import Evaluation, Problem
+from ..records import Design, Run
+from ..resolve import problem_of
+from ..spec import Entry, Improve, PartSpec, Require, Spec, spec_from_json
+from .extras import Baseline, ForceMark, ReportExtras
+from .maps import stray_maps
+
+Pattern = NDArray[np.int8]
+Pair = tuple[Pattern, Pattern]
+
+_FORCES = {"axial_force": 1.0, "holding_force": -1.0}
+
+
+def collect_extras(run: Run, design: Design) -> ReportExtras:
+    """Return what the report on one design of ``run`` shows beside the run itself."""
+    spec = spec_from_json(run.spec_json)
+    return ReportExtras(
+        baselines=() if spec.is_given else baselines(spec, problem_of(run.spec_json), design),
+        marks=force_marks(spec),
+        maps=stray_maps(spec, run, design),
+        needs_guide=any(entry.quantity == "stand_off" for entry in _entries(spec)),
+        rotation=spec.conditions.rotation,
+        lateral=spec.conditions.lateral,
+    )
+
+
+def baselines(spec: Spec, problem: Problem, design: Design) -> tuple[Baseline, ...]:
+    """Return what uniform, striped and checkered faces of the allowed pole width would reach.
+
+    A given face keeps its pattern, a matched or identical mover follows its base. Where both are free, the base meets
+    its like or its reverse, whichever comes closer to the spec.
+    """
+    out = []
+    for name in ("uniform", "stripes", "checker"):
+        found = [problem.exact(a, b) for a, b in _pairs(spec, problem, design, name)]
+        out.append(Baseline(name, max(found, key=_rank).values))
+    return tuple(out)
+
+
+def force_marks(spec: Spec) -> tuple[ForceMark, ...]:
+    """Return what the spec asks of the axial force with the mover centred, as bounds on F_z."""
+    marks: list[ForceMark] = []
+    for entry in _entries(spec):
+        sign = _FORCES.get(entry.quantity)
+        if sign is None or np.any(np.asarray(entry.settings.get("offset_mm", 0.0), float)):
+            continue
+        gaps = np.broadcast_to(to_si(np.asarray(entry.settings["gap_mm"], float), "mm"), entry.count).tolist()
+        if isinstance(entry, Require):
+            marks += _bounds(entry, sign, gaps)
+        elif isinstance(entry, Improve) and entry.targets is not None:
+            marks += [ForceMark(gap, "toward", sign * to) for gap, to in zip(gaps, entry.targets, strict=True)]
+    return tuple(marks)
+
+
+def _entries(spec: Spec) -> tuple[Entry, ...]:
+    return (*spec.require, *spec.improve)
+
+
+def _bounds(entry: Require, sign: float, gaps: list[float]) -> list[ForceMark]:
+    if entry.kind == "equal_to":
+        bands = entry.bands or (0.0,) * entry.count
+        rows = zip(gaps, entry.bounds, bands, strict=True)
+        return [ForceMark(gap, "equal_to", sign * target, band) for gap, target, band in rows]
+    # a hold of at least 20 N is an axial force of at most -20 N
+    is_lower = (entry.kind == "at_least") == (sign > 0.0)
+    return [
+        ForceMark(gap, "at_least" if is_lower else "at_most", sign * bound)
+        for gap, bound in zip(gaps, entry.bounds, strict=True)
+    ]
+
+
+def _pairs(spec: Spec, problem: Problem, design: Design, name: str) -> list[Pair]:
+    base = design.base if spec.base.is_given else _obvious(problem.base, spec.base, name)
+    word = spec.mover.pattern
+    if spec.mover.is_given:
+        return [(base, design.mover)]
+    if word == "matched":
+        return [(base, base)]
+    if word == "same":
+        return [(base, -base[::-1])]
+    mover = _obvious(problem.mover, spec.mover, name)
+    return [(base, mover), (base, -mover)]
+
+
+def _obvious(part: Part, asked: PartSpec, name: str) -> Pattern:
+    if name == "uniform":
+        return uniform(part.mask)
+    width = max(1, math.ceil(to_si(asked.pole_width_min_mm, "mm") / part.cell - 1e-9))
+    return stripes(part.mask, width) if name == "stripes" else checker(part.mask, width)
+
+
+def _rank(evaluation: Evaluation) -> tuple[bool, int, float, float]:
+    worst = evaluation.worst_margin
+    met = int((evaluation.margins >= 0.0).sum())
+    return evaluation.feasible, met, worst if math.isfinite(worst) else -math.inf, evaluation.score

@@ -1,0 +1,132 @@
+"""A run in the terminal: required against reached, worst margin first. For people, so on stderr."""
+
+from __future__ import annotations
+
+import os
+
+from rich import box
+from rich.console import Console
+from rich.table import Table
+from rich.text import Text
+
+from .judged import Judged, bound_text, finite, judge, numbers, percent, tightest_first
+from .records import Design, Run
+from .result import Status, status_of
+
+_HEADLINES: dict[Status, tuple[str, str]] = {
+    "met": ("every requirement is met", "bold green"),
+    "missed": ("the best design misses a requirement", "bold yellow"),
+    "impossible": ("proven impossible", "bold red"),
+    "interrupted": ("interrupted; the best so far is saved", "bold yellow"),
+    "error": ("failed", "bold red"),
+}
+_LISTED = 8
+_LOG_WIDTH = 120  # of a pipe or a log file, which have no width of their own
+
+
+def stderr_console() -> Console:
+    """Return the console for people: colours on a terminal, plain text elsewhere or with NO_COLOR set."""
+    plain = bool(os.environ.get("NO_COLOR"))
+    console = Console(
+        stderr=True, force_terminal=False if plain else None, no_color=plain or None, highlight=False, emoji=False,
+        markup=False,
+    )  # fmt: skip
+    if not console.is_terminal and "COLUMNS" not in os.environ:
+        console.width = _LOG_WIDTH
+    return console
+
+
+def print_summary(run: Run, console: Console, design: Design | None = None, status: Status | None = None) -> None:
+    """Print a run: what it is, one design against the requirements, the other designs, the warnings.
+
+    Args:
+        run: The run.
+        console: Where to.
+        design: The design shown in full, the best one when None.
+        status: How the command ended, where it differs from ``status_of(run)``.
+    """
+    headline, style = _HEADLINES[status if status is not None else status_of(run)]
+    console.print(Text(run.title or "untitled", style="bold"))
+    console.print(Text(headline[0].upper() + headline[1:] + ".", style=style))
+    console.print(Text(f"Stopped: {run.stop_reason} ({run.evaluations} evaluations, seed {run.seed})."))
+    shown = design if design is not None else run.designs[0] if run.designs else None
+    if shown is not None:
+        console.print(_requirements(run, shown, plain=not console.is_terminal))
+    if len(run.designs) > 1:
+        console.print(_designs(run, plain=not console.is_terminal))
+    if run.verification is not None:
+        _print_verification(run, console)
+    for warning in run.warnings:
+        console.print(Text(f"warning: {warning}", style="yellow" if console.is_terminal else ""))
+    console.print(Text("IDEAL: computed for sharp pole edges and full magnetizing depth."))
+
+
+def _table(title: str, plain: bool) -> Table:
+    return Table(
+        title=title, title_justify="left", title_style="" if plain else "bold", header_style="" if plain else "bold",
+        box=box.ASCII2 if plain else box.SIMPLE_HEAD, pad_edge=False,
+    )  # fmt: skip
+
+
+def _requirements(run: Run, design: Design, plain: bool) -> Table:
+    table = _table(f"Design {design.id} ({design.origin}), tightest margin first", plain)
+    table.add_column("quantity", overflow="fold")
+    table.add_column("required", justify="right", overflow="fold")
+    table.add_column("reached", justify="right", overflow="fold")
+    table.add_column("unit")
+    table.add_column("margin", justify="right")
+    table.add_column("")
+    for entry in tightest_first(judge(run, design)):
+        word, style = _verdict(entry)
+        required = _ascii(bound_text(entry)) if plain else bound_text(entry)
+        margin = "" if entry.kind == "improve" else percent(entry.margin)
+        cells = (entry.label, required, numbers(entry.values), entry.unit, margin)
+        table.add_row(*(Text(cell) for cell in cells), Text(word, style="" if plain else style))
+    return table
+
+
+def _verdict(entry: Judged) -> tuple[str, str]:
+    if entry.kind == "improve":
+        return "", ""
+    return ("met", "green") if entry.ok else ("missed", "bold red")
+
+
+def _designs(run: Run, plain: bool) -> Table:
+    table = _table("Designs, best first", plain)
+    entries = [judge(run, design) for design in run.designs[:_LISTED]]
+    improves = [n for n, entry in enumerate(entries[0]) if entry.kind == "improve"]
+    for heading in ("id", "from", "requirements"):
+        table.add_column(heading)
+    table.add_column("worst margin", justify="right")
+    for n in improves:
+        table.add_column(f"{entries[0][n].label} [{entries[0][n].unit}]", justify="right", overflow="fold")
+    for design, judged in zip(run.designs, entries, strict=False):
+        verdict = Text("met" if design.feasible else "missed")
+        reached = [Text(numbers(judged[n].values)) for n in improves]
+        margin = Text(percent(finite(design.worst_margin)))
+        table.add_row(Text(design.id), Text(design.origin), verdict, margin, *reached)
+    if len(run.designs) > _LISTED:
+        table.caption = f"and {len(run.designs) - _LISTED} more in the archive"
+    return table
+
+
+def _print_verification(run: Run, console: Console) -> None:
+    found = run.verification or {}
+    second = found.get("second_path")
+    if second:
+        verdict = "agrees" if second["ok"] else "DISAGREES"
+        size, limit = second["largest"], second["tolerance"]
+        console.print(Text(f"Second path: {verdict} (largest relative difference {size:.1e}, allowed {limit:.0e})."))
+    scatter = found.get("scatter")
+    if scatter:
+        share = 100.0 * scatter["share_all"]
+        console.print(
+            Text(f"Scatter: {share:.1f} % of {scatter['samples']} sampled pairs meet every requirement.")
+        )
+    for wrong in found.get("assembly", []):
+        if wrong["dangerous"]:
+            console.print(Text(f"wrong assembly, {wrong['name']}: {wrong['text']}"))
+
+
+def _ascii(text: str) -> str:
+    return text.replace("≥", ">=").replace("≤", "<=").replace("±", "+-")
