@@ -9,7 +9,7 @@ where both faces hold one texture, that is the move that changes it.
 from __future__ import annotations
 
 from collections.abc import Callable
-from functools import cached_property
+from functools import cached_property, reduce
 from typing import Any, NamedTuple
 
 import jax
@@ -18,7 +18,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .forms import ConditionForms
-from .scoring import score
 from .stopping import Budget
 
 Array = NDArray[np.float64]
@@ -84,9 +83,26 @@ class TabuSearch:
             seed: Seed of the tenures.
             budget: Ends the walk early when it is used up.
             steps: Moves of each start.
-            softness: Soft minimum of each start, shape (``STARTS``,); see ``scoring.score``.
+            softness: Width of the soft minimum of each start, > 0, shape (``STARTS``,); see ``scoring.score``.
             violation: Price of a violation of each start, shape (``STARTS``,).
         """
+        walks = [
+            self._begin(starts[half], seed + n, softness[half], violation[half])
+            for n, half in enumerate((slice(0, STARTS // 2), slice(STARTS // 2, STARTS)))
+        ]
+        for first in range(0, steps, CHUNK):
+            if budget.reason() is not None or budget.left < len(starts):
+                break
+            # two halves: each call returns at once, so both cores walk
+            walks = [
+                (self._advance(self._tables, walk, *price, first + jnp.arange(CHUNK)), price) for walk, price in walks
+            ]
+            jax.block_until_ready(walks)
+            budget.spend(len(starts) * CHUNK)
+        return np.concatenate([np.asarray(walk.best_z) for walk, _ in walks])
+
+    def _begin(self, starts: Array, seed: int, softness: Array, violation: Array) -> tuple[_Walk, tuple[jax.Array, ...]]:
+        """State of some starts, and their prices."""
         values = np.stack([self.forms.values(z) for z in starts])
         slopes = np.stack([self.forms.slopes(z) for z in starts])
         price = (jnp.asarray(softness), jnp.asarray(violation))
@@ -94,19 +110,22 @@ class TabuSearch:
         keys = jax.random.split(jax.random.key(seed), len(starts))
         free = jnp.zeros(starts.shape, dtype=jnp.int64)
         z = jnp.asarray(starts)
-        walk = _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, z, keys)
-        for first in range(0, steps, CHUNK):
-            if budget.reason() is not None or budget.left < len(starts):
-                break
-            walk = self._advance(self._tables, walk, *price, first + jnp.arange(CHUNK))
-            budget.spend(len(starts) * CHUNK)
-        return np.asarray(walk.best_z)
+        return _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, z, keys), price
 
     def _score(self, values: jax.Array, softness: jax.Array, violation: jax.Array) -> Any:
-        """Score of forms (..., form)."""
-        count = self.forms.counts.size
-        worth = values[..., -1] if self.forms.improves else None
-        return score(jnp, self.forms.counts, values[..., :count], worth, violation, softness)
+        """Score of forms (form, ...), shape (...): ``scoring.score`` written out form by form, which XLA fuses."""
+        forms = list(values)
+        if self.forms.improves:
+            *conditions, worth = forms
+            return worth + violation * sum((jnp.minimum(c, 0.0) for c in conditions), jnp.zeros(()))
+        counting = [c for c, counts in zip(forms, self.forms.counts, strict=True) if counts]
+        equal = [c for c, counts in zip(forms, self.forms.counts, strict=True) if not counts]
+        missed = violation * sum((jnp.minimum(c, 0.0) for c in equal), jnp.zeros(()))
+        if not counting:
+            return missed + jnp.minimum(reduce(jnp.minimum, equal), 0.5)
+        least = reduce(jnp.minimum, counting)
+        tail = sum((jnp.exp((least - c) / softness) for c in counting), jnp.zeros(()))
+        return least - softness * jnp.log(tail) + missed
 
     @cached_property
     def _advance(self) -> Callable[..., _Walk]:
@@ -124,7 +143,7 @@ class TabuSearch:
             single = -2.0 * walk.z * walk.slopes + 4.0 * tables.curvature
             both = single[:, first] + single[:, second] + 4.0 * walk.z[first] * walk.z[second] * tables.coupling
             after = walk.values[:, None] + jnp.concatenate([single, both], axis=1)
-            scores = self._score(after.T, softness, violation)
+            scores = self._score(after, softness, violation)
             barred = walk.free > now
             barred = jnp.concatenate([barred, barred[first] | barred[second]])
             scores = jnp.where(barred & (scores <= walk.best), -jnp.inf, scores)

@@ -22,12 +22,15 @@ def rounded(z: Array) -> Array:
 
 
 def keeps_width(layout: Layout, z: Array) -> NDArray[np.bool_]:
-    """Which rounded sets of variables (m, n) give patterns that keep the pole width on both parts."""
+    """Which rounded sets of variables (m, n) give patterns that keep the pole width on both parts.
+
+    Cells that are given are as wide as they are given; the free ones are held to the width.
+    """
     good = np.ones(len(z), dtype=bool)
-    for number, pattern in enumerate(layout.patterns(z)):
+    for number, (face, pattern) in enumerate(zip((layout.base, layout.mover), layout.patterns(z), strict=True)):
         if layout.brushes[number] > 1 and not (number == 1 and layout.linked):
             bare = unpainted(pattern.astype(np.int8), layout.masks[number], layout.brushes[number])
-            good &= ~bare.any(axis=(-2, -1))
+            good &= ~(bare & (face.index >= 0)).any(axis=(-2, -1))
     return good
 
 

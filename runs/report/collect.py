@@ -27,7 +27,7 @@ def collect_extras(run: Run, design: Design) -> ReportExtras:
     """Return what the report on one design of ``run`` shows beside the run itself."""
     spec = spec_from_json(run.spec_json)
     return ReportExtras(
-        baselines=() if spec.is_given else baselines(spec, problem_of(run.spec_json), design),
+        baselines=() if spec.is_given else baselines(spec, problem_of(spec), design),
         marks=force_marks(spec),
         maps=stray_maps(spec, run, design),
         needs_guide=any(entry.quantity == "stand_off" for entry in _entries(spec)),

@@ -1,0 +1,88 @@
+"""The designs a run keeps: exactly judged, best first, distinct from each other."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..objectives.problem import Evaluation, Problem
+from .layout import Layout
+from .width import keeps_width
+
+Array = NDArray[np.float64]
+
+_LARGEST = 64
+_DISTINCT = 0.02
+"""Designs count as distinct when more than this fraction of the free cells differs."""
+
+
+@dataclass(frozen=True, eq=False)
+class Candidate:
+    """One rounded design.
+
+    Attributes:
+        z: Variables, -1 and +1, shape (n,).
+        origin: Which kind of search found it.
+        evaluation: Its exact judgement.
+    """
+
+    z: Array
+    origin: str
+    evaluation: Evaluation
+
+    @property
+    def rank(self) -> tuple[bool, float]:
+        """Larger is better: feasible designs by their score, others by their worst margin."""
+        feasible = self.evaluation.feasible
+        return feasible, self.evaluation.score if feasible else self.evaluation.worst_margin
+
+
+class Pool:
+    """Designs of a run, best first.
+
+    Attributes:
+        problem: What is asked.
+        layout: What is free.
+        candidates: The best designs so far.
+    """
+
+    def __init__(self, problem: Problem, layout: Layout) -> None:
+        self.problem = problem
+        self.layout = layout
+        self.candidates: list[Candidate] = []
+        self._seen: set[bytes] = set()
+
+    @property
+    def best(self) -> Candidate | None:
+        """The best design so far."""
+        return self.candidates[0] if self.candidates else None
+
+    def add(self, z: Array, origin: str) -> None:
+        """Judge rounded variables exactly and keep them if they are among the best; repeats are ignored."""
+        key = np.packbits(z > 0.0).tobytes()
+        if key in self._seen or not keeps_width(self.layout, z[None])[0]:
+            return
+        self._seen.add(key)
+        a, b = self.layout.patterns(z)
+        self.candidates.append(Candidate(z.copy(), origin, self.problem.exact(a, b)))
+        self.candidates.sort(key=lambda candidate: candidate.rank, reverse=True)
+        del self.candidates[_LARGEST:]
+
+    def distinct(self, count: int) -> list[Candidate]:
+        """Up to ``count`` of the best designs, each apart from all better ones."""
+        apart = max(_DISTINCT * self.layout.count, 1.0)
+        found: list[Candidate] = []
+        for candidate in self.candidates:
+            if all(self._distance(candidate.z, other.z) > apart for other in found):
+                found.append(candidate)
+            if len(found) == count:
+                break
+        return found
+
+    def _distance(self, one: Array, other: Array) -> float:
+        """Variables that differ; both parts reversed together are the same design where nothing tells them apart."""
+        differ = float((one != other).sum())
+        given = self.layout.base.constant.any() or self.layout.mover.constant.any()
+        return min(differ, one.size - differ) if self.problem.reverses and not given else differ

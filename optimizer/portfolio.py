@@ -1,0 +1,114 @@
+"""The portfolio: runs what measured best on each kind of problem and keeps the best rounded designs.
+
+A run is a fixed list of stages; each is a deterministic function of the seed, the stage's name and the designs kept so far.
+So a run that was stopped continues at the last finished stage and ends as the uninterrupted one would.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..objectives.problem import Problem
+from . import exhaustive
+from .layout import Layout
+from .pool import Pool
+from .seeds import generator
+from .stages import Stages
+from .stopping import Budget, StopReason
+
+Array = NDArray[np.float64]
+
+_ROUNDS = 40
+_PATIENCE = 5
+"""Rounds without a gain that end a run whose best design meets every require; twice as many where it does not."""
+_GAIN = 1e-3
+"""Smallest relative gain of the score that counts."""
+
+
+@dataclass
+class Progress:
+    """Where a run stands; all that a resume needs besides the designs.
+
+    Attributes:
+        stage: Stages finished.
+        stale: Rounds since the last gain.
+        mark: Rank that the next gain is measured from.
+        history: Rows (evaluations, worst margin, score) after each stage.
+    """
+
+    stage: int = 0
+    stale: int = 0
+    mark: tuple[bool, float] = (False, -np.inf)
+    history: list[tuple[float, float, float]] = field(default_factory=list)
+
+
+def search(
+    problem: Problem,
+    layout: Layout,
+    budget: Budget,
+    seed: int,
+    starts: int,
+    given: Sequence[tuple[Array, Array]] = (),
+    pool: Pool | None = None,
+    progress: Progress | None = None,
+    on_stage: Callable[[Pool, Progress], None] = lambda pool, progress: None,
+) -> tuple[Pool, Progress, StopReason]:
+    """Find rounded designs.
+
+    Args:
+        problem: What is asked.
+        layout: What is free.
+        budget: Evaluations, seconds and interrupt.
+        seed: Seed of everything random.
+        starts: Starts of the gradient search.
+        given: Patterns to begin from as well.
+        pool: Designs of an earlier part of the run.
+        progress: Where that part stood.
+        on_stage: Called after each finished stage, to keep what there is.
+
+    Returns:
+        The designs, where the run stands and why it ended; the pool holds at least one design.
+    """
+    pool, progress = pool or Pool(problem, layout), progress or Progress()
+    stages = Stages(problem, layout, budget, pool, starts, given)
+    if progress.stage == 0:
+        stages.obvious(generator(seed, "obvious"))
+        budget.spend(1)
+    if layout.count == 0:
+        return pool, progress, StopReason.GIVEN
+    if exhaustive.fits(problem, layout, budget):
+        found, complete = exhaustive.best(problem, layout, budget)
+        for z in found:
+            pool.add(z, "enumerated")
+        _note(pool, progress, budget)
+        return pool, progress, StopReason.PROVEN if complete else budget.reason() or StopReason.EVALUATIONS
+    while progress.stage < _ROUNDS:
+        number = progress.stage
+        stages.run(number, generator(seed, "stage", number), progress.stale)
+        reason = budget.reason()
+        if reason is not None:
+            return pool, progress, reason
+        _note(pool, progress, budget)
+        progress.stage += 1
+        on_stage(pool, progress)
+        met = pool.best is not None and pool.best.evaluation.feasible
+        if progress.stage >= 3 and progress.stale >= (_PATIENCE if met else 2 * _PATIENCE):
+            break
+    return pool, progress, StopReason.PLATEAU
+
+
+def _note(pool: Pool, progress: Progress, budget: Budget) -> None:
+    """Write the stage's outcome down and count rounds without a gain."""
+    if pool.best is None:
+        return
+    evaluation, rank = pool.best.evaluation, pool.best.rank
+    progress.history.append((float(budget.used), evaluation.worst_margin, evaluation.score))
+    gained = rank[0] > progress.mark[0] or rank[1] > progress.mark[1] + _GAIN * abs(progress.mark[1])
+    if not np.isfinite(progress.mark[1]):
+        gained = True
+    progress.stale = 0 if gained else progress.stale + 1
+    progress.mark = rank if gained else progress.mark

@@ -1,0 +1,196 @@
+"""The stages of a run: structured starts, gradient and linear programs first, then rounds of local search."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ..models.patterns import checker, stripes, uniform
+from ..objectives.problem import Problem
+from .forms import ConditionForms
+from .gradient import GradientDesign
+from .layout import Layout
+from .linear import alternate
+from .local import LocalSearch
+from .polish import Polish
+from .pool import Pool
+from .relaxed import Relaxed
+from .scoring import score
+from .stopping import Budget
+from .tabu import STARTS, TabuSearch, affordable
+from .textures import composites, noise, perturbed
+from .width import keeps_width, mended, rounded
+
+Array = NDArray[np.float64]
+
+_DRAWN = 800
+"""Structured starts drawn and judged for each set that is used."""
+_FIRST_WALK, _WALK = 1000, 750
+_SOFTNESS = np.geomspace(0.02, 0.1, STARTS)
+_JUDGED = 8
+"""Designs of a stage that are judged exactly, best first by the search's own score."""
+_POLISHED = 3
+_POLISH_STEPS = 150
+_LOCAL_STEPS = 600
+_PROGRAMS = 4
+_AMPLITUDE = 0.1
+
+
+class Stages:
+    """What a run does, stage by stage.
+
+    Attributes:
+        problem: What is asked.
+        layout: What is free.
+        budget: Evaluations, seconds and interrupt.
+        pool: Where designs go.
+    """
+
+    def __init__(
+        self,
+        problem: Problem,
+        layout: Layout,
+        budget: Budget,
+        pool: Pool,
+        starts: int,
+        given: Sequence[tuple[Array, Array]],
+    ) -> None:
+        self.problem, self.layout, self.budget, self.pool = problem, layout, budget, pool
+        self._starts = starts
+        self._given = [mended(layout, layout.variables(a, b)) if layout.count else np.zeros(0) for a, b in given]
+        self._coarse = layout.coarse()
+
+    def obvious(self, random: np.random.Generator) -> None:
+        """Judge what is given and the obvious patterns, so that a run never ends with nothing."""
+        for z in self._given:
+            self.pool.add(z, "given")
+        faces = [
+            [uniform(mask), *(make(mask, width) for make in (stripes, checker) for width in (brush, 2 * brush))]
+            for mask, brush in zip(self.layout.masks, self.layout.brushes, strict=True)
+        ]
+        for a, b in zip(*faces, strict=True):
+            for sign in (1.0, -1.0):
+                self.pool.add(mended(self.layout, self.layout.variables(a, sign * b)), "given")
+
+    def run(self, number: int, random: np.random.Generator, stale: int) -> None:
+        """Run one stage; the first two are relaxed searches, then come rounds of local search."""
+        if number == 0:
+            self._relaxed(random)
+        elif self._tabu is not None and self._coarse is self.layout:
+            self._walks(self._tabu, number, random, stale)
+        elif self._tabu is not None:
+            self._walks(self._tabu, number, random, stale)
+            self._refine(random)
+        elif self._local is not None:
+            self._refine(random)
+        else:
+            self._polish(number, random)
+
+    # --- relaxed searches -------------------------------------------------------------------------------------------
+
+    def _relaxed(self, random: np.random.Generator) -> None:
+        """Gradient design from structured and smooth random starts, then linear programs from its best."""
+        half = self._starts // 2
+        structured = self._best_drawn(self.layout, random, half) * _AMPLITUDE
+        latent = np.concatenate([structured, 3.0 * _AMPLITUDE * noise(self.layout, random, self._starts - half)])
+        relaxed = self._gradient.run(latent, self.budget)
+        order = self._add(np.stack([mended(self.layout, z) for z in relaxed]), "gradient")
+        if self._programs is not None:
+            found = [alternate(self._programs, relaxed[n], self.budget) for n in order[:_PROGRAMS]]
+            self._add(np.stack([mended(self.layout, z) for z in found]), "linear")
+
+    def _best_drawn(self, layout: Layout, random: np.random.Generator, count: int) -> Array:
+        """The best ``count`` of many structured starts, by the search's own score."""
+        many = min(_DRAWN, 20 * self.budget.left // 21) if count else 0
+        drawn = composites(layout, random, max(many, count))
+        order = np.argsort(-self._scores(layout, drawn), kind="stable")
+        return drawn[order[:count]]
+
+    def _scores(self, layout: Layout, z: Array) -> Array:
+        """Scores of rounded variables (m, n) of a layout, shape (m,)."""
+        self.budget.spend(len(z))
+        if layout is not self.layout:
+            z = np.stack([self._fine(one) for one in z])
+        conditions, worth = self._physics.judge_many(z)
+        return np.asarray(score(np, self.problem.counts, conditions, worth if self.problem.improves else None))
+
+    def _add(self, z: Array, origin: str) -> NDArray[np.intp]:
+        """Judge the best of many rounded variables exactly; returns the order of all by the search's score."""
+        order = np.argsort(-self._scores(self.layout, z), kind="stable")
+        for n in order[:_JUDGED]:
+            self.pool.add(z[n], origin)
+        return order
+
+    # --- local search -----------------------------------------------------------------------------------------------
+
+    def _walks(self, tabu: TabuSearch, number: int, random: np.random.Generator, stale: int) -> None:
+        """Tabu walks from the best designs disturbed, and from fresh structured starts, more of those when stuck."""
+        layout = self._coarse
+        known = [rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(4)]
+        fresh = STARTS // 2 if number == 1 or stale >= 2 else 0
+        starts = list(self._best_drawn(layout, random, fresh))
+        for n in range(STARTS - fresh):
+            z = known[n % len(known)]
+            starts.append(z if number == 1 and n < len(known) else perturbed(layout, z, random))
+        violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
+        seed = int(random.integers(2**31))
+        steps = _FIRST_WALK if number == 1 else _WALK
+        found = tabu.run(np.stack(starts), seed, self.budget, steps, _SOFTNESS, violation)
+        self._add(np.stack([self._fine(z) for z in found]), "polish")
+
+    def _refine(self, random: np.random.Generator) -> None:
+        """Moves of whole windows on the fine lattice, keeping the pole width."""
+        if self._local is None:
+            return
+        for candidate in self.pool.distinct(_POLISHED):
+            self.pool.add(self._local.run(candidate.z, random, _LOCAL_STEPS, self.budget), "polish")
+
+    def _polish(self, number: int, random: np.random.Generator) -> None:
+        """For problems that are not linear: calibrate the surrogates at the best design, design again, polish."""
+        best = self.pool.best
+        if best is not None:
+            self._physics.calibrated(self.problem.overstated(*self.layout.patterns(best.z)))
+        if number > 1:
+            self._relaxed(random)
+        for candidate in self.pool.distinct(_POLISHED):
+            self.pool.add(self._polisher.run(candidate.z, _POLISH_STEPS, self.budget), "polish")
+
+    def _fine(self, z: Array) -> Array:
+        """Variables of the full layout for those of the coarse one."""
+        if self._coarse is self.layout:
+            return z
+        fine = rounded(self.layout.variables(*self._coarse.patterns(z)))
+        return fine if keeps_width(self.layout, fine[None])[0] else mended(self.layout, fine)
+
+    # --- what the stages use, built when first needed ---------------------------------------------------------------
+
+    @cached_property
+    def _physics(self) -> Relaxed:
+        return Relaxed(self.problem, self.layout)
+
+    @cached_property
+    def _gradient(self) -> GradientDesign:
+        return GradientDesign(self._physics)
+
+    @cached_property
+    def _polisher(self) -> Polish:
+        return Polish(self._physics)
+
+    @cached_property
+    def _programs(self) -> ConditionForms | None:
+        """Forms for linear programs; none where the mover is the base's own pattern, which makes them quadratic."""
+        return ConditionForms(self.problem, self.layout) if self.problem.is_linear and not self.layout.linked else None
+
+    @cached_property
+    def _tabu(self) -> TabuSearch | None:
+        if not self.problem.is_linear:
+            return None
+        forms = ConditionForms(self.problem, self._coarse)
+        return TabuSearch(forms) if affordable(forms) else None
+
+    @cached_property
+    def _local(self) -> LocalSearch | None:
+        return LocalSearch(ConditionForms(self.problem, self.layout)) if self.problem.is_linear else None

@@ -1,0 +1,54 @@
+"""Sentences that a user must read beside the numbers."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from ..models.units import from_si
+from ..objectives.problem import Problem
+from ..optimizer.stopping import StopReason
+from .records import Design
+from .spec import Spec
+
+_RIM = 1e-9
+
+
+def warnings_of(
+    spec: Spec, problem: Problem, designs: Sequence[Design], reason: StopReason
+) -> tuple[str, ...]:
+    """Return what the spec and its outcome call for, most important first."""
+    found = ["IDEAL: sharp pole edges and full magnetization depth are assumed; a real part is weaker at its edges."]
+    if designs and not designs[0].feasible:
+        found.append("The best design misses a requirement; nothing says that no better one exists.")
+    if reason is StopReason.SECONDS:
+        found.append("The cap in seconds ended the run: it is not reproducible.")
+    entries = (*spec.require, *spec.improve)
+    if any(entry.quantity == "stand_off" for entry in entries):
+        found.append(
+            "A stand-off is stable only on a guide: rigid magnets that rest axially are unstable sideways or in tilt "
+            "(Earnshaw)."
+        )
+    if spec.conditions.rotation == "free":
+        found.append(
+            "The mover may turn, but this version judges the angle 0 alone: hold its angle, or check others yourself."
+        )
+    if spec.conditions.lateral == "free":
+        found.append("The mover is free sideways: ask for lateral_stiffness, or it may slide off the pose judged here.")
+    for name, part, part_spec in (("base", problem.base, spec.base), ("mover", problem.mover, spec.mover)):
+        rim_x, rim_y = (from_si(width, "mm") for width in part.rim)
+        if max(part.rim) > _RIM and part_spec.shape == "rectangle":
+            found.append(f"{name}: {rim_x:.3g} x {rim_y:.3g} mm beyond whole cells stay unmagnetized (x, y, both sides).")
+        if part_spec.material.from_memory:
+            found.append(
+                f"{name}: the numbers of {part_spec.material.name} are from memory; check them with your supplier."
+            )
+        if part_spec.material.recoil_permeability > 1.0:
+            found.append(
+                f"{name}: recoil permeability {part_spec.material.recoil_permeability:g} is stored but not modelled yet; "
+                "expect a few percent less force."
+            )
+    if any(np.isnan(design.values).any() for design in designs[:1]):
+        found.append("A value that does not exist (no stand-off, no peak) counts as a missed requirement.")
+    return tuple(found)
