@@ -24,7 +24,7 @@ from scipy import fft
 
 from .pair import PairForms, Term
 
-jax.config.update("jax_enable_x64", True)  # pair kernels are unusable in float32 (REFERENCES: cancellation)
+jax.config.update("jax_enable_x64", True)  # type: ignore[no-untyped-call]  # pair kernels are unusable in float32 (REFERENCES: cancellation)
 
 Array = NDArray[np.float64]
 
@@ -103,20 +103,20 @@ def _padded_transform(shape: tuple[int, int], sizes: tuple[int, int], pattern: j
     """``_transform`` of a pattern of ``shape``, one axis at a time."""
     wide = jnp.concatenate([pattern, jnp.zeros((shape[0], sizes[1] - shape[1]))], axis=1)
     half = jnp.fft.rfft(wide, axis=1).T
-    return jnp.fft.fft(jnp.concatenate([half, jnp.zeros((half.shape[0], sizes[0] - shape[0]), half.dtype)], axis=1), axis=1)
+    high = jnp.concatenate([half, jnp.zeros((half.shape[0], sizes[0] - shape[0]), half.dtype)], axis=1)
+    return jnp.fft.fft(high, axis=1)
 
 
 def _transform_forward(shape: tuple[int, int], sizes: tuple[int, int], pattern: jax.Array) -> tuple[jax.Array, None]:
     return _padded_transform(shape, sizes, pattern), None
 
 
-def _transform_backward(
-    shape: tuple[int, int], sizes: tuple[int, int], _: None, slope: jax.Array
-) -> tuple[jax.Array]:
+def _transform_backward(shape: tuple[int, int], sizes: tuple[int, int], _: None, slope: jax.Array) -> tuple[jax.Array]:
     """Real part of the transposed transform: a sum over half of the frequencies is an inverse real transform."""
     half = jnp.fft.fft(slope, axis=1)[:, : shape[0]].T
     weights = sizes[1] / _multiplicity(sizes[1])
-    return (jnp.fft.irfft(jnp.conj(half) * weights[None, :], sizes[1], axis=1)[:, : shape[1]],)
+    wide = jax.lax.fft(jnp.conj(half) * weights[None, :], jax.lax.FftType.IRFFT, (sizes[1],))
+    return (wide[:, : shape[1]],)
 
 
 _padded_transform.defvjp(_transform_forward, _transform_backward)

@@ -72,4 +72,4 @@ def _whole_cells(length: float, cell: float) -> int:
 
 
 def _centres(count: int, cell: float) -> NDArray[np.float64]:
-    return (np.arange(count) - (count - 1) / 2.0) * cell
+    return np.asarray((np.arange(count, dtype=np.float64) - (count - 1) / 2.0) * cell)

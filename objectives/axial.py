@@ -164,7 +164,7 @@ class StandOff(Quantity):
         """First downward zero of the net force on the true curve, NaN without one; shape (1,)."""
 
         def net(gaps: Array) -> Array:
-            return case.axial_force(gaps) - self._load
+            return np.asarray(case.axial_force(gaps) - self._load)
 
         gaps = gap_grid(self._between, case.base.cell, FINE)
         values = net(gaps)

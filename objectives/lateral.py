@@ -11,7 +11,16 @@ from ..models.pair import Row
 from .case import Case
 from .gaps import extreme
 from .plan import Plan, Response
-from .quantity import LinearQuantity, Params, Quantity, SmoothQuantity, gap_offsets, linear_value, safe_norm, smooth_maximum
+from .quantity import (
+    LinearQuantity,
+    Params,
+    Quantity,
+    SmoothQuantity,
+    gap_offsets,
+    linear_value,
+    safe_norm,
+    smooth_maximum,
+)
 
 Array = NDArray[np.float64]
 _OFFSETS = 17
@@ -43,13 +52,14 @@ class LateralStiffness(SmoothQuantity):
     def __init__(self, params: Params, plan: Plan) -> None:
         gap = params["gap"]
         self.elements = 1
-        self._rows = [plan.row("kxx", gap), plan.row("kyy", gap), plan.row("kxy", gap)]
+        self._rows = np.array([plan.row("kxx", gap), plan.row("kyy", gap), plan.row("kxy", gap)])
 
     def surrogate(self, response: Response) -> Any:
         """Closed form of the 2 x 2 eigenvalue, shape (..., 1)."""
-        kxx, kyy, kxy = (-response.pair[..., row] for row in self._rows)
-        spread = response.xp.stack([(kxx - kyy) / 2.0, kxy], axis=-1)
-        return ((kxx + kyy) / 2.0 - safe_norm(response.xp, spread))[..., None]
+        stiffness = -response.pair[..., self._rows]
+        mean = stiffness @ np.array([0.5, 0.5, 0.0])
+        spread = stiffness @ np.array([[0.5, 0.0], [-0.5, 0.0], [0.0, 1.0]])
+        return (mean - safe_norm(response.xp, spread))[..., None]
 
 
 @final
@@ -89,7 +99,7 @@ class SlideForce(Quantity):
         def resistance(offsets: Array) -> Array:
             poses = [self._pose(float(offset)) for offset in offsets]
             lateral = case.pair([Row(self._component(), *pose) for pose in poses])
-            return -lateral - self._friction * case.pair([Row("fz", *pose) for pose in poses])
+            return np.asarray(-lateral - self._friction * case.pair([Row("fz", *pose) for pose in poses]))
 
         offsets = np.linspace(0.0, self._travel, _FINE_OFFSETS)
         return np.array([extreme(resistance, offsets, resistance(offsets))])

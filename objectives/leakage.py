@@ -11,7 +11,7 @@ from ..models.peak import field_reach, peak
 from .case import Case
 from .plan import Plan, Response
 from .quantity import Params, Quantity, SmoothQuantity, safe_norm, smooth_maximum
-from .sites import surface
+from .sites import part_names, surface
 
 Array = NDArray[np.float64]
 
@@ -57,8 +57,9 @@ class FieldAt(SmoothQuantity):
 
     def surrogate(self, response: Response) -> Any:
         """B at the points, shape (..., elements)."""
-        b = response.linear[..., self._rows]
-        return safe_norm(response.xp, b) if self._axis is None else b[..., self._axis]
+        if self._axis is None:
+            return safe_norm(response.xp, response.linear[..., self._rows])
+        return response.linear[..., self._rows[:, self._axis]]
 
 
 @final
@@ -109,8 +110,8 @@ class NetMoment(SmoothQuantity):
 
     def __init__(self, params: Params, plan: Plan) -> None:
         self.elements = 1
-        parts = ("base", "mover") if params["of"] == "both" else (params["of"],)
-        self._rows = [plan.moment(part) for part in parts]
+        of = params["of"]
+        self._rows = [plan.moment(part) for part in part_names(of)]
 
     def surrogate(self, response: Response) -> Any:
         """Largest size, shape (..., 1)."""

@@ -11,12 +11,9 @@ from ..models import making
 from .case import Case
 from .plan import Plan, Response
 from .quantity import Params, Quantity
+from .sites import part_names
 
 Array = NDArray[np.float64]
-
-
-def _parts(params: Params) -> tuple[str, ...]:
-    return ("base", "mover") if params["of"] == "both" else (params["of"],)
 
 
 def _patterns(source: Response, parts: tuple[str, ...]) -> list[Any]:
@@ -35,7 +32,7 @@ class PoleCount(Quantity):
 
     def __init__(self, params: Params, plan: Plan) -> None:
         self.elements = 1
-        self._of = _parts(params)
+        self._of = part_names(params["of"])
 
     def surrogate(self, response: Response) -> Any:
         """Euler number of the poles, shape (..., 1)."""
@@ -60,7 +57,7 @@ class PoleEdgeLength(Quantity):
 
     def __init__(self, params: Params, plan: Plan) -> None:
         self.elements = 1
-        self._of = _parts(params)
+        self._of = part_names(params["of"])
         self._cell = plan.base.cell
         self._mask = {"base": plan.base.mask, "mover": plan.mover.mask}
 
@@ -70,8 +67,10 @@ class PoleEdgeLength(Quantity):
         lengths = []
         for part, pattern in zip(self._of, _patterns(response, self._of), strict=True):
             mask = self._mask[part]
-            across_x = ((1.0 - pattern[..., 1:] * pattern[..., :-1]) * (mask[:, 1:] & mask[:, :-1])).sum((-2, -1))
-            across_y = ((1.0 - pattern[..., 1:, :] * pattern[..., :-1, :]) * (mask[1:] & mask[:-1])).sum((-2, -1))
+            right, above = _neighbours(pattern)
+            mask_right, mask_above = _neighbours(mask.astype(np.float64))
+            across_x = ((1.0 - pattern * right) * (mask * mask_right)).sum((-2, -1))
+            across_y = ((1.0 - pattern * above) * (mask * mask_above)).sum((-2, -1))
             lengths.append(0.5 * self._cell * (across_x + across_y))
         return xp.stack(lengths, axis=-1).max(-1)[..., None]
 
@@ -96,7 +95,7 @@ class NarrowestPole(Quantity):
 
     def __init__(self, params: Params, plan: Plan) -> None:
         self.elements = 1
-        self._of = _parts(params)
+        self._of = part_names(params["of"])
         self._cell = plan.base.cell
         self._mask = {"base": plan.base.mask, "mover": plan.mover.mask}
         self._edges = [PoleEdgeLength({"of": part}, plan) for part in self._of]
@@ -122,6 +121,16 @@ class NarrowestPole(Quantity):
 
 def _euler(p: Any) -> Any:
     """Cells - adjacent pairs + blocks of four of a region given by weights in [0, 1], shape (...)."""
-    pairs_x, pairs_y = p[..., 1:] * p[..., :-1], p[..., 1:, :] * p[..., :-1, :]
-    blocks = pairs_x[..., 1:, :] * pairs_x[..., :-1, :]
+    right, above = _neighbours(p)
+    pairs_x, pairs_y = p * right, p * above
+    blocks = pairs_x * _neighbours(pairs_x)[1]
     return p.sum((-2, -1)) - pairs_x.sum((-2, -1)) - pairs_y.sum((-2, -1)) + blocks.sum((-2, -1))
+
+
+def _neighbours(p: Any) -> tuple[Any, Any]:
+    """The next cell along x and along y, 0 beyond the array; shapes of ``p`` (..., ny, nx).
+
+    By matrix products: the derivative of a slice pads an array that has just been computed (see ``pair_fourier``).
+    """
+    rows, columns = p.shape[-2:]
+    return p @ np.eye(columns, k=-1), np.eye(rows, k=1) @ p

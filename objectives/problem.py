@@ -85,9 +85,15 @@ class Problem:
     @cached_property
     def is_linear(self) -> bool:
         """Are all conditions and the improvement linear in the pair rows?"""
-        improves = zip(self.improves, self.quantities[len(self.requires) :], strict=True)
-        straight = (q.linear is not None and i.sense != "toward" and not i.log for i, q in improves)
-        return not self._smooth and all(straight)
+        return not self._smooth and self.has_linear_core
+
+    @cached_property
+    def has_linear_core(self) -> bool:
+        """Is there enough that is linear in the pair rows to search by that alone: the improve, or a bound?"""
+        if self.improves:
+            quantity, improve = self.quantities[len(self.requires)], self.improves[0]
+            return quantity.linear is not None and improve.sense != "toward" and not improve.log
+        return bool(self.counts[: self.constant.size].any())
 
     @cached_property
     def judged_by_rows(self) -> bool:
@@ -110,7 +116,7 @@ class Problem:
         ]
         return max(widths, default=0.0)
 
-    def rows(self, a: Array, b: Array) -> Response:
+    def rows(self, a: NDArray[Any], b: NDArray[Any]) -> Response:
         """The plan's numbers for patterns a (ny, nx) and b (my, mx) in float64 NumPy."""
         a, b = np.asarray(a, dtype=np.float64), np.asarray(b, dtype=np.float64)
         linear = self.linear_base @ a.ravel() + self.linear_mover @ b.ravel()
@@ -186,12 +192,12 @@ class Problem:
 
     def _verdict(self, margins: Array, values: list[Array]) -> tuple[NDArray[np.bool_], Array, Array]:
         """Feasible, worst margin that counts, and score; shapes (...)."""
-        feasible = (margins >= 0.0).all(-1)
-        worst = np.full(feasible.shape, np.nan)
+        feasible = np.asarray((margins >= 0.0).all(-1))
+        worst = np.full(feasible.shape, np.nan, dtype=np.float64)
         if self.requires:
             equal = np.array([require.bound.kind == "equal_to" for require in self.requires])
             counting = np.where(equal & (margins >= 0.0), np.inf, margins).min(-1)
-            worst = np.where(np.isfinite(counting) | (counting < 0.0), counting, margins.min(-1))
+            worst = np.asarray(np.where(np.isfinite(counting) | (counting < 0.0), counting, margins.min(-1)))
         score = worst
         if self.improves:
             score = np.nan_to_num(improvement(self.improves[0], values[len(self.requires)], np), nan=-np.inf)

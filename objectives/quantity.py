@@ -159,14 +159,11 @@ def safe_norm(xp: Any, vectors: Any) -> Any:
 def smooth_maximum(xp: Any, values: Any, sharpness: float = 64.0) -> Any:
     """Smooth upper estimate of the maximum over the last axis, within log(n) / sharpness of it relatively.
 
-    The scale is the largest size itself, held constant for the gradient, so that units do not matter.
+    Values are taken on the scale of the largest size, so that units do not matter; 0, with a gradient of 0, where all
+    of them vanish.
     """
-    scale = xp.maximum(xp.abs(values).max(-1, keepdims=True), 1e-300)
-    if xp is not np:
-        from jax import lax  # the one place where the two array modules differ
-
-        scale = lax.stop_gradient(scale)
-    weights = sharpness * values / scale
+    size = xp.abs(values).max(-1, keepdims=True)
+    weights = sharpness * values / xp.where(size > 1e-150, size, 1.0)
     top = weights.max(-1, keepdims=True)
     total = xp.log(xp.exp(weights - top).sum(-1)) + top[..., 0]
-    return total * scale[..., 0] / sharpness
+    return total * size[..., 0] / sharpness

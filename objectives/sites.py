@@ -12,6 +12,13 @@ Source = Literal["base", "mover", "pair"]
 Side = Literal["back", "front", "around"]
 
 
+def part_names(of: str) -> tuple[Literal["base", "mover"], ...]:
+    """The parts that "base", "mover" or "both" stands for."""
+    if of == "both":
+        return ("base", "mover")
+    return ("base",) if of == "base" else ("mover",)
+
+
 def seats(base: Part, mover: Part, of: Source, gap: float) -> tuple[Seat | None, Seat | None]:
     """Places of (base, mover), None for a part that is not there; a mover alone stands on the plane z = 0.
 

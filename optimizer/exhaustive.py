@@ -61,14 +61,15 @@ def _all(count: int, total: int) -> Iterator[Array]:
     """Variables of every pair, in chunks; with half of them, the last variable stays +1."""
     for first in range(0, total, _CHUNK):
         numbers = np.arange(first, min(first + _CHUNK, total), dtype=np.int64)
-        yield 1.0 - 2.0 * ((numbers[:, None] >> np.arange(count)) & 1)
+        yield np.asarray(1.0 - 2.0 * ((numbers[:, None] >> np.arange(count)) & 1), dtype=np.float64)
 
 
 def _dense(problem: Problem) -> Array:
     """All rows as full matrices, shape (ny * nx, row, my * mx)."""
     ny, nx = problem.base.shape
     columns = [problem.forms.mover_column((y, x)) for y in range(ny) for x in range(nx)]
-    return np.stack([column.reshape(problem.forms.count, -1) for column in columns])
+    # sizes written out: a problem of fields alone has no rows
+    return np.stack(columns).reshape(ny * nx, problem.forms.count, problem.mover.mask.size)
 
 
 def _judge(problem: Problem, layout: Layout, z: Array, dense: Array | None) -> Array:

@@ -1,4 +1,4 @@
-"""Conditions of a linear problem as bilinear forms in the variables: what LPs and flips work on.
+"""Linear conditions of a problem as bilinear forms in the variables: what LPs and flips work on.
 
 Each condition is one form (its combination of pair rows, scaled), the improve's worth one more. With one part fixed every
 form is linear in the other part's variables; its slopes come from one product for all forms.
@@ -19,7 +19,7 @@ Array = NDArray[np.float64]
 
 
 class ConditionForms:
-    """Forms of a problem whose conditions and improve are linear in the pair rows.
+    """Forms of the conditions, and of the improve, that are linear in the pair rows.
 
     Attributes:
         layout: Variables.
@@ -30,7 +30,7 @@ class ConditionForms:
 
     def __init__(self, problem: Problem, layout: Layout) -> None:
         self.layout = layout
-        self.counts = problem.counts
+        self.counts = problem.counts[: problem.constant.size]
         self.improves = bool(problem.improves)
         factors, self.constant = problem.linear_forms()
         self._forms = problem.forms.combined(factors)
@@ -50,12 +50,12 @@ class ConditionForms:
 
     def slopes_base(self, b: Array) -> Array:
         """Derivative through the base's cells for a mover pattern, shape (form, n)."""
-        products = self._forms.base_products(b).reshape(self._forms.count, -1)
+        products = self._forms.base_products(b).reshape(self._forms.count, self._to_base.shape[0])
         return np.asarray(products @ self._to_base)
 
     def slopes_mover(self, a: Array) -> Array:
         """Derivative through the mover's cells for a base pattern, shape (form, n)."""
-        products = self._forms.mover_products(a).reshape(self._forms.count, -1)
+        products = self._forms.mover_products(a).reshape(self._forms.count, self._to_mover.shape[0])
         return np.asarray(products @ self._to_mover)
 
     def slope_change(self, variable: int) -> Array:
@@ -63,10 +63,10 @@ class ConditionForms:
         total = np.zeros((self._forms.count, self.layout.count))
         for cell, sign in _column(self._base_columns, variable):
             spread = self._forms.mover_column(divmod(cell, self.layout.base.index.shape[1]))
-            total += sign * (spread.reshape(len(spread), -1) @ self._to_mover)
+            total += sign * (spread.reshape(len(spread), self._to_mover.shape[0]) @ self._to_mover)
         for cell, sign in _column(self._mover_columns, variable):
             spread = self._forms.base_column(divmod(cell, self.layout.mover.index.shape[1]))
-            total += sign * (spread.reshape(len(spread), -1) @ self._to_base)
+            total += sign * (spread.reshape(len(spread), self._to_base.shape[0]) @ self._to_base)
         return total
 
     @cached_property

@@ -14,7 +14,7 @@ from typing import Any, NamedTuple
 import jax
 import jax.numpy as jnp
 import numpy as np
-import optax
+import optax  # type: ignore[import-untyped]
 from numpy.typing import NDArray
 
 from .layout import FaceMap
@@ -150,14 +150,14 @@ def _filtered(pattern: jax.Array, mask: NDArray[np.bool_], weights: Array) -> ja
     """Weighted mean over the neighbours on the part."""
     if weights.size == 1:
         return pattern
-    on = jnp.asarray(mask, dtype=jnp.float64)
+    on = jnp.asarray(mask.astype(np.float64))
     return on * _smear(pattern * on, weights) / jnp.maximum(_smear(on, weights), 1e-9)
 
 
 def _smear(values: jax.Array, weights: Array) -> jax.Array:
     """Separable convolution with zeros outside, as two banded matrix products (no padding of computed arrays)."""
     rows, columns = (_band(size, weights) for size in values.shape)
-    return rows @ values @ columns.T
+    return jnp.asarray(rows) @ values @ jnp.asarray(columns.T)
 
 
 def _band(size: int, weights: Array) -> Array:

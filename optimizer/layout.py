@@ -181,12 +181,16 @@ def _face_map(face: Face, first: int) -> tuple[FaceMap, int]:
 def _blocks(shape: tuple[int, int], width: int) -> Index:
     """Numbers (ny, nx) of blocks at least ``width`` cells wide, symmetric about the middle where possible."""
     rows, columns = (_runs(n, width) for n in shape)
-    return rows[:, None] * (columns.max() + 1) + columns[None, :]
+    return np.asarray(rows[:, None] * (columns.max() + 1) + columns[None, :])
 
 
 def _runs(cells: int, width: int) -> Index:
-    """Number of the run that each of ``cells`` belongs to: runs of at least ``width``, mirror-symmetric."""
-    count = max(cells // width, 1)
+    """Number of the run that each of ``cells`` belongs to: runs of at least ``width``, mirror-symmetric.
+
+    A width beyond all cells gives one run.
+    """
+    width = min(width, cells)
+    count = cells // width
     extra = cells - count * width
     if extra % 2 == 1 and count % 2 == 0:
         count, extra = count - 1, extra + width

@@ -14,7 +14,7 @@ from .width import keeps_width
 Array = NDArray[np.float64]
 
 _LARGEST = 64
-_DISTINCT = 0.02
+_DISTINCT = 0.01
 """Designs count as distinct when more than this fraction of the free cells differs."""
 
 

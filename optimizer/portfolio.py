@@ -23,8 +23,8 @@ from .stopping import Budget, StopReason
 Array = NDArray[np.float64]
 
 _ROUNDS = 40
-_PATIENCE = 5
-"""Rounds without a gain that end a run whose best design meets every require; twice as many where it does not."""
+_PATIENCE_MET, _PATIENCE_MISSED = 4, 10
+"""Rounds without a gain that end a run whose best design meets every require, or does not."""
 _GAIN = 1e-3
 """Smallest relative gain of the score that counts."""
 
@@ -96,7 +96,7 @@ def search(
         progress.stage += 1
         on_stage(pool, progress)
         met = pool.best is not None and pool.best.evaluation.feasible
-        if progress.stage >= 3 and progress.stale >= (_PATIENCE if met else 2 * _PATIENCE):
+        if progress.stage >= 3 and progress.stale >= (_PATIENCE_MET if met else _PATIENCE_MISSED):
             break
     return pool, progress, StopReason.PLATEAU
 

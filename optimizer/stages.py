@@ -29,14 +29,16 @@ Array = NDArray[np.float64]
 _DRAWN = 800
 """Structured starts drawn and judged for each set that is used."""
 _FIRST_WALK, _WALK = 1000, 750
-_SOFTNESS = np.geomspace(0.02, 0.1, STARTS)
-_JUDGED = 8
+_SOFTNESS = np.geomspace(0.04, 0.08, STARTS)
+_PARENTS = 8
+_JUDGED = STARTS
 """Designs of a stage that are judged exactly, best first by the search's own score."""
 _POLISHED = 3
 _POLISH_STEPS = 150
 _LOCAL_STEPS = 600
 _PROGRAMS = 4
 _AMPLITUDE = 0.1
+_FAR = 0.1
 
 
 class Stages:
@@ -76,18 +78,36 @@ class Stages:
                 self.pool.add(mended(self.layout, self.layout.variables(a, sign * b)), "given")
 
     def run(self, number: int, random: np.random.Generator, stale: int) -> None:
-        """Run one stage; the first two are relaxed searches, then come rounds of local search."""
-        if number == 0:
+        """Run one stage.
+
+        Tabu walks come first wherever conditions are linear, since they are the strongest search a second there;
+        relaxed design follows where they end far from the requires, and whenever they no longer gain. Elsewhere relaxed
+        design and polish take turns.
+        """
+        tabu = self._tabu
+        if number == 0 and tabu is None:
             self._relaxed(random)
-        elif self._tabu is not None and self._coarse is self.layout:
-            self._walks(self._tabu, number, random, stale)
-        elif self._tabu is not None:
-            self._walks(self._tabu, number, random, stale)
-            self._refine(random)
-        elif self._local is not None:
+        elif tabu is not None and not self._wants_relaxed(number, stale):
+            self._walks(tabu, number, random, stale)
+            if self._coarse is not self.layout:
+                self._refine(random)
+        elif self.problem.is_linear:
+            self._relaxed(random)
             self._refine(random)
         else:
-            self._polish(number, random)
+            self._calibrate()
+            self._relaxed(random)
+        if not self.problem.is_linear and number > 0:
+            self._calibrate()
+            self._polish()
+
+    def _wants_relaxed(self, number: int, stale: int) -> bool:
+        """Is it the turn of relaxed design in a problem that walks can search?"""
+        best = self.pool.best
+        far = best is None or not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR
+        if not self.problem.is_linear:
+            return number % 2 == 1
+        return (number == 1 and far) or stale in (2, 6)
 
     # --- relaxed searches -------------------------------------------------------------------------------------------
 
@@ -111,6 +131,8 @@ class Stages:
 
     def _scores(self, layout: Layout, z: Array) -> Array:
         """Scores of rounded variables (m, n) of a layout, shape (m,)."""
+        if not len(z):
+            return np.zeros(0)
         self.budget.spend(len(z))
         if layout is not self.layout:
             z = np.stack([self._fine(one) for one in z])
@@ -129,32 +151,32 @@ class Stages:
     def _walks(self, tabu: TabuSearch, number: int, random: np.random.Generator, stale: int) -> None:
         """Tabu walks from the best designs disturbed, and from fresh structured starts, more of those when stuck."""
         layout = self._coarse
-        known = [rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(4)]
-        fresh = STARTS // 2 if number == 1 or stale >= 2 else 0
+        known = [rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(_PARENTS)]
+        fresh = STARTS if number == 0 else STARTS // 4 if stale >= 4 else 0
         starts = list(self._best_drawn(layout, random, fresh))
         for n in range(STARTS - fresh):
             z = known[n % len(known)]
-            starts.append(z if number == 1 and n < len(known) else perturbed(layout, z, random))
+            starts.append(perturbed(layout, z, random))
         violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
-        seed = int(random.integers(2**31))
-        steps = _FIRST_WALK if number == 1 else _WALK
-        found = tabu.run(np.stack(starts), seed, self.budget, steps, _SOFTNESS, violation)
+        steps = _FIRST_WALK if number == 0 else _WALK
+        found = tabu.run(np.stack(starts), random, self.budget, steps, _SOFTNESS, violation)
         self._add(np.stack([self._fine(z) for z in found]), "polish")
 
     def _refine(self, random: np.random.Generator) -> None:
         """Moves of whole windows on the fine lattice, keeping the pole width."""
-        if self._local is None:
+        if self._local is None or max(self.layout.brushes) == 1:
             return
         for candidate in self.pool.distinct(_POLISHED):
             self.pool.add(self._local.run(candidate.z, random, _LOCAL_STEPS, self.budget), "polish")
 
-    def _polish(self, number: int, random: np.random.Generator) -> None:
-        """For problems that are not linear: calibrate the surrogates at the best design, design again, polish."""
+    def _calibrate(self) -> None:
+        """Correct the surrogates so that they are exact at the best design."""
         best = self.pool.best
         if best is not None:
             self._physics.calibrated(self.problem.overstated(*self.layout.patterns(best.z)))
-        if number > 1:
-            self._relaxed(random)
+
+    def _polish(self) -> None:
+        """Moves on any problem, judged by the physics itself."""
         for candidate in self.pool.distinct(_POLISHED):
             self.pool.add(self._polisher.run(candidate.z, _POLISH_STEPS, self.budget), "polish")
 
@@ -186,7 +208,7 @@ class Stages:
 
     @cached_property
     def _tabu(self) -> TabuSearch | None:
-        if not self.problem.is_linear:
+        if not self.problem.has_linear_core:
             return None
         forms = ConditionForms(self.problem, self._coarse)
         return TabuSearch(forms) if affordable(forms) else None

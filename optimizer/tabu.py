@@ -26,6 +26,7 @@ STARTS = 16
 """Starts that walk together; always as many, so that nothing recompiles."""
 CHUNK = 250
 """Steps between two looks at the budget."""
+_ROUNDING = 2e-6
 LARGEST = 30_000_000
 """Largest number of entries of the table of slope changes."""
 
@@ -53,7 +54,6 @@ class _Walk(NamedTuple):
     free: jax.Array
     best: jax.Array
     best_z: jax.Array
-    key: jax.Array
 
 
 class TabuSearch:
@@ -71,46 +71,46 @@ class TabuSearch:
         pairs = forms.layout.facing()
         coupling = changes[pairs[:, 0], :, pairs[:, 1]].T.reshape(len(forms.constant), len(pairs))
         self._tables = _Tables(*(jnp.asarray(part) for part in (changes, curvature, pairs, coupling)))
-        self._longest = max(n // 12, 8)
+        self._first, self._second = (_run_or_list(column) for column in pairs.T)
+        self._tenure = (4, max(n // 12, 8) + 1)
 
     def run(
-        self, starts: Array, seed: int, budget: Budget, steps: int, softness: Array, violation: Array
+        self, starts: Array, random: np.random.Generator, budget: Budget, steps: int, softness: Array, violation: Array
     ) -> Array:
         """Walk from rounded variables (``STARTS``, n) and return the best that each start met, (``STARTS``, n).
 
         Args:
             starts: Variables of -1 and +1.
-            seed: Seed of the tenures.
+            random: Where the tenures come from.
             budget: Ends the walk early when it is used up.
             steps: Moves of each start.
             softness: Width of the soft minimum of each start, > 0, shape (``STARTS``,); see ``scoring.score``.
             violation: Price of a violation of each start, shape (``STARTS``,).
         """
-        walks = [
-            self._begin(starts[half], seed + n, softness[half], violation[half])
-            for n, half in enumerate((slice(0, STARTS // 2), slice(STARTS // 2, STARTS)))
-        ]
+        halves = (slice(0, STARTS // 2), slice(STARTS // 2, STARTS))
+        walks = [self._begin(starts[half], softness[half], violation[half]) for half in halves]
         for first in range(0, steps, CHUNK):
             if budget.reason() is not None or budget.left < len(starts):
                 break
             # two halves: each call returns at once, so both cores walk
+            until = first + np.arange(CHUNK)[:, None, None] + random.integers(*self._tenure, size=(CHUNK, STARTS, 2))
             walks = [
-                (self._advance(self._tables, walk, *price, first + jnp.arange(CHUNK)), price) for walk, price in walks
+                (self._advance(self._tables, walk, *price, (first + np.arange(CHUNK), until[:, half])), price)
+                for (walk, price), half in zip(walks, halves, strict=True)
             ]
-            jax.block_until_ready(walks)
+            jax.block_until_ready(walks)  # type: ignore[no-untyped-call]
             budget.spend(len(starts) * CHUNK)
         return np.concatenate([np.asarray(walk.best_z) for walk, _ in walks])
 
-    def _begin(self, starts: Array, seed: int, softness: Array, violation: Array) -> tuple[_Walk, tuple[jax.Array, ...]]:
+    def _begin(self, starts: Array, softness: Array, violation: Array) -> tuple[_Walk, tuple[jax.Array, ...]]:
         """State of some starts, and their prices."""
         values = np.stack([self.forms.values(z) for z in starts])
         slopes = np.stack([self.forms.slopes(z) for z in starts])
         price = (jnp.asarray(softness), jnp.asarray(violation))
         best = jax.vmap(self._score)(jnp.asarray(values), *price)
-        keys = jax.random.split(jax.random.key(seed), len(starts))
         free = jnp.zeros(starts.shape, dtype=jnp.int64)
         z = jnp.asarray(starts)
-        return _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, z, keys), price
+        return _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, z), price
 
     def _score(self, values: jax.Array, softness: jax.Array, violation: jax.Array) -> Any:
         """Score of forms (form, ...), shape (...): ``scoring.score`` written out form by form, which XLA fuses."""
@@ -124,12 +124,12 @@ class TabuSearch:
         if not counting:
             return missed + jnp.minimum(reduce(jnp.minimum, equal), 0.5)
         least = reduce(jnp.minimum, counting)
-        tail = sum((jnp.exp((least - c) / softness) for c in counting), jnp.zeros(()))
-        return least - softness * jnp.log(tail) + missed
+        tail = sum((_decay((c - least) / softness) for c in counting), jnp.zeros(()))
+        return least - softness * _logarithm(tail) + missed
 
     @cached_property
     def _advance(self) -> Callable[..., _Walk]:
-        n, longest = self.forms.layout.count, self._longest
+        n, first, second = self.forms.layout.count, self._first, self._second
 
         def flip(tables: _Tables, walk: _Walk, variable: jax.Array, amount: jax.Array) -> _Walk:
             """Move one variable by ``amount`` (-2 z to reverse it, 0 to leave it)."""
@@ -138,34 +138,59 @@ class TabuSearch:
             z = walk.z + jnp.where(jnp.arange(n) == variable, amount, 0.0)
             return walk._replace(values=values, slopes=slopes, z=z)
 
-        def step(tables: _Tables, walk: _Walk, softness: jax.Array, violation: jax.Array, now: jax.Array) -> _Walk:
-            first, second = tables.pairs[:, 0], tables.pairs[:, 1]
-            single = -2.0 * walk.z * walk.slopes + 4.0 * tables.curvature
-            both = single[:, first] + single[:, second] + 4.0 * walk.z[first] * walk.z[second] * tables.coupling
-            after = walk.values[:, None] + jnp.concatenate([single, both], axis=1)
-            scores = self._score(after, softness, violation)
+        def step(
+            tables: _Tables, walk: _Walk, softness: jax.Array, violation: jax.Array, now: jax.Array, until: jax.Array
+        ) -> _Walk:
+            # moves are only compared here: single precision is twice as fast; values and slopes stay in double
+            z, slopes = walk.z.astype(jnp.float32), walk.slopes.astype(jnp.float32)
+            single = -2.0 * z * slopes + 4.0 * tables.curvature.astype(jnp.float32)
+            both = single[:, first] + single[:, second] + 4.0 * z[first] * z[second] * tables.coupling.astype(jnp.float32)
+            after = walk.values.astype(jnp.float32)[:, None] + jnp.concatenate([single, both], axis=1)
+            scores = self._score(after, softness.astype(jnp.float32), violation.astype(jnp.float32))
             barred = walk.free > now
             barred = jnp.concatenate([barred, barred[first] | barred[second]])
-            scores = jnp.where(barred & (scores <= walk.best), -jnp.inf, scores)
+            # more than rounding above the best: else the way back to it would never be barred
+            known = (walk.best + _ROUNDING * (1.0 + jnp.abs(walk.best))).astype(jnp.float32)
+            scores = jnp.where(barred & (scores <= known), -jnp.inf, scores)
             move = jnp.argmax(scores)
             pair = tables.pairs[jnp.maximum(move - n, 0)] if len(self._tables.pairs) else jnp.zeros(2, dtype=jnp.int64)
             joint = move >= n
             i, j = jnp.where(joint, pair[0], move), pair[1]
-            key, draw = jax.random.split(walk.key)
-            tenure = jax.random.randint(draw, (2,), 4, longest + 1)
             at = jnp.arange(n)
-            free = jnp.where(at == i, now + tenure[0], walk.free)
-            free = jnp.where((at == j) & joint, now + tenure[1], free)
+            free = jnp.where(at == i, until[0], walk.free)
+            free = jnp.where((at == j) & joint, until[1], free)
             walk = flip(tables, walk, i, -2.0 * walk.z[i])
             walk = flip(tables, walk, j, jnp.where(joint, -2.0 * walk.z[j], 0.0))
             reached = self._score(walk.values, softness, violation)
             better = reached > walk.best
             best_z = jnp.where(better, walk.z, walk.best_z)
-            return walk._replace(free=free, key=key, best=jnp.where(better, reached, walk.best), best_z=best_z)
+            return walk._replace(free=free, best=jnp.where(better, reached, walk.best), best_z=best_z)
 
-        many = jax.vmap(step, in_axes=(None, 0, 0, 0, None))
+        many = jax.vmap(step, in_axes=(None, 0, 0, 0, None, 0))
 
-        def advance(tables: _Tables, walk: _Walk, softness: jax.Array, violation: jax.Array, now: jax.Array) -> _Walk:
-            return jax.lax.scan(lambda w, at: (many(tables, w, softness, violation, at), None), walk, now)[0]
+        def advance(tables: _Tables, walk: _Walk, softness: jax.Array, violation: jax.Array, times: Any) -> _Walk:
+            return jax.lax.scan(lambda w, at: (many(tables, w, softness, violation, *at), None), walk, times)[0]
 
         return jax.jit(advance)
+
+
+def _decay(x: Any) -> Any:
+    """exp(-x) for x >= 0 to a few percent by three squarings: XLA's exp and log took most of a step's time."""
+    base = jnp.maximum(1.0 - x / 8.0, 0.0)
+    for _ in range(3):
+        base = base * base
+    return base
+
+
+def _logarithm(x: Any) -> Any:
+    """log(x) for x >= 1 by its odd series in (x - 1) / (x + 1), rising and smooth; 1 % off at x = 6."""
+    y = (x - 1.0) / (x + 1.0)
+    square = y * y
+    return 2.0 * y * (1.0 + square * (1.0 / 3.0 + square * (0.2 + square / 7.0)))
+
+
+def _run_or_list(numbers: NDArray[np.intp]) -> slice | NDArray[np.intp]:
+    """A slice where the numbers are a run (XLA copies it, but gathers a list element by element)."""
+    if numbers.size and (np.diff(numbers) == 1).all():
+        return slice(int(numbers[0]), int(numbers[-1]) + 1)
+    return numbers

@@ -15,11 +15,14 @@ from numpy.typing import NDArray
 
 from .. import __version__
 from ..models.errors import InputError, Issue
+from ..models.making import unpainted
+from ..models.units import from_si
 from ..objectives.problem import Problem
 from ..optimizer.layout import Layout
 from ..optimizer.pool import Candidate, Pool
 from ..optimizer.portfolio import Progress, search
 from ..optimizer.stopping import Budget, StopReason
+from ..optimizer.width import mended
 from . import checkpoint
 from .archive import read_run, write_run
 from .curves import curves_of
@@ -35,6 +38,8 @@ Watcher = Callable[[Run], None]
 
 _KEPT = 8
 """Distinct designs that a run keeps."""
+_FINAL = (StopReason.PROVEN.value, StopReason.GIVEN.value)
+"""Ends that no larger budget changes."""
 
 
 def design(
@@ -73,9 +78,9 @@ def design(
     earlier = read_run(path) if resume and path.exists() else None
     if earlier is not None:
         _check_same(earlier, found, path)
-        if earlier.complete and _budgets(earlier) == _budgets_of(found):
+        if earlier.complete and (earlier.stop_reason in _FINAL or _budgets(earlier) == _budgets_of(found)):
             return earlier
-    starts = _stored(read_run(start_from), found) if start_from else []
+    starts = _stored(read_run(Path(start_from)), found) if start_from else []
 
     def keep(run: Run) -> None:
         write_run(run, path)
@@ -105,13 +110,20 @@ def execute(
     began = time.monotonic()
     problem = problem_of(spec)
     layout = layout_of(spec, problem)
-    pool, progress = checkpoint.restore(earlier.state, problem, layout) if earlier else (None, None)
+    _check_width(layout, problem)
+    pool, progress = (
+        checkpoint.restore(earlier.state, problem, layout) if earlier else (Pool(problem, layout), Progress())
+    )
     before = float(json.loads(earlier.provenance["durations_json"])["search_s"]) if earlier else 0.0
     given = [*(starts or []), *_start(spec, problem)]
-    last = checkpoint.take(pool, progress, earlier.evaluations) if earlier and pool and progress else None
+    used = int(earlier.state["evaluations"][0]) if earlier else 0
+    if layout.count:
+        for a, b in given:
+            pool.add(mended(layout, layout.variables(a, b)), "given")
+    # a resume begins at the last finished stage; before the first one that is the beginning, with what is given
+    last = checkpoint.take(pool, progress, used)
 
     with watched() as interrupted:
-        used = int(earlier.state["evaluations"][0]) if earlier else 0
         budget = Budget(spec.search.evaluations, spec.search.budget_s, interrupted, used, before)
 
         def on_stage(pool: Pool, progress: Progress) -> None:
@@ -131,14 +143,13 @@ def _run(
     pool: Pool,
     progress: Progress,
     budget: Budget,
-    last: checkpoint.Checkpoint | None,
+    state: checkpoint.Checkpoint,
     reason: StopReason,
     began: float,
 ) -> Run:
     """Put everything together as it is stored."""
     kept = pool.distinct(_KEPT)
     designs = tuple(_design(pool.layout, candidate, f"d{n + 1}") for n, candidate in enumerate(kept))
-    state = last or checkpoint.take(pool, progress, budget.used)
     history = np.array(progress.history, dtype=np.float64).reshape(-1, 3)
     complete = reason is not StopReason.INTERRUPTED
     return Run(
@@ -185,6 +196,24 @@ def _provenance(began: float, budget: Budget) -> dict[str, str]:
         "platform": platform.platform(),
         "durations_json": json.dumps(durations),
     }
+
+
+def _check_width(layout: Layout, problem: Problem) -> None:
+    """Refuse a pole width that not even one single pole keeps where the pattern is free."""
+    faces = ((layout.base, problem.base), (layout.mover, problem.mover))
+    issues = []
+    for number, (face, part) in enumerate(faces):
+        brush, mask = layout.brushes[number], layout.masks[number]
+        bare = unpainted(mask.astype(np.int8), mask, brush) & (face.index >= 0)
+        if bare.any() and not (number == 1 and layout.linked):
+            message = (
+                f"must fit into the blank wherever the pattern is free, received {from_si(brush * part.cell, 'mm'):g} "
+                f"in whole cells (narrowest_pole requires included): {bare.sum()} of {mask.sum()} cells lie where the "
+                "blank is narrower; use a smaller width"
+            )
+            issues.append(Issue(message, f"{('base', 'mover')[number]}.pole_width_min_mm"))
+    if issues:
+        raise InputError(issues)
 
 
 def _start(spec: Spec, problem: Problem) -> list[tuple[Array, Array]]:

@@ -58,7 +58,7 @@ def layout_of(spec: Spec, problem: Problem) -> Layout:
     """What is free in both patterns."""
     link: Literal["", "matched", "same"] = ""
     if spec.mover.pattern in ("matched", "same"):
-        link = spec.mover.pattern  # type: ignore[assignment]
+        link = spec.mover.pattern
     faces = [
         _face(part_spec, part, problem.brush(name), upper=name == "mover")
         for name, part_spec, part in (("base", spec.base, problem.base), ("mover", spec.mover, problem.mover))

@@ -109,7 +109,7 @@ def test_planes_keep_clear_of_the_magnets(of: str, side: str) -> None:
 
 def test_obvious_patterns_are_judged_by_the_same_problem() -> None:
     spec, run = spec_with()
-    problem = problem_of(run.spec_json)
+    problem = problem_of(spec)
     found = {baseline.name: baseline.values for baseline in baselines(spec, problem, run.designs[0])}
     assert list(found) == ["uniform", "stripes", "checker"]
     for values in found.values():

@@ -1,0 +1,1 @@
+"""What ``verify`` does with one design of a run: a second physics path, scatter of tolerances, wrong assembly."""
