@@ -1,7 +1,7 @@
 """The magnetized pair: energy, force, stiffness and moment on the mover as bilinear forms of the two patterns.
 
-A row names one component at one pose. Its value is ``sum_ij a_i K(j - i) b_j`` over base cells i and mover cells j of one
-pitch, so a row is a table of K over whole-cell displacements, built once in float64. Rigid axial magnetization
+A row names one component at one pose. Its value is ``sum_ij a_i K(j - i) b_j`` over base cells i and mover cells j of
+one pitch, so a row is a table of K over whole-cell displacements, built once in float64. Rigid axial magnetization
 (recoil permeability 1): surface charges +-Br on the faces of each part.
 
 Signs: base below, mover above, polarity +1 along +z, forces and moments act on the mover, F_z > 0 pushes apart.

@@ -64,9 +64,7 @@ class Info:
 
 GAP = Key("gap_mm", "number", "mm", minimum=0.0, help="Gap between the coated mating faces.")
 GAPS = Key("gap_mm", "numbers", "mm", minimum=0.0, help="Gap between the coated mating faces, one or a list.")
-OFFSET = Key(
-    "offset_mm", "pair", "mm", required=False, default=(0.0, 0.0), help="Lateral offset [x, y] of the mover."
-)
+OFFSET = Key("offset_mm", "pair", "mm", required=False, default=(0.0, 0.0), help="Lateral offset [x, y] of the mover.")
 OFFSETS = Key(
     "offset_mm", "pairs", "mm", required=False, default=(0.0, 0.0),
     help="Lateral offset [x, y] of the mover, one or a list.",
@@ -79,9 +77,7 @@ PART = Key(
 SOURCE = Key(
     "of", "choice", choices=("base", "mover", "pair"), required=False, default="pair", help="A part alone, or the pair."
 )
-PAIR_GAP = Key(
-    "gap_mm", "number", "mm", required=False, minimum=0.0, help="Gap of the pair; needed when of = \"pair\"."
-)
+PAIR_GAP = Key("gap_mm", "number", "mm", required=False, minimum=0.0, help='Gap of the pair; needed when of = "pair".')
 AXIS = Key("axis", "choice", choices=("x", "y"), required=False, default="x", help="Direction of the slide.")
 
 _ENTRIES = (
@@ -127,7 +123,7 @@ _ENTRIES = (
                 choices=("-x", "+x", "-y", "+y"),
                 required=False,
                 default="-x",
-                help="Pivot edge of the mover: \"-x\" is the edge at lowest x.",
+                help='Pivot edge of the mover: "-x" is the edge at lowest x.',
             ),
         ),
         "higher",

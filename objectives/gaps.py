@@ -41,6 +41,9 @@ def extreme(curve: Curve, gaps: Array, values: Array) -> float:
     best = int(np.argmax(values))
     low, high = gaps[max(best - 1, 0)], gaps[min(best + 1, gaps.size - 1)]
     inside = minimize_scalar(
-        lambda gap: -float(curve(np.array([gap]))[0]), bounds=(low, high), method="bounded", options={"xatol": 1e-6 * high}
+        lambda gap: -float(curve(np.array([gap]))[0]),
+        bounds=(low, high),
+        method="bounded",
+        options={"xatol": 1e-6 * high},
     )
     return float(max(values[best], -inside.fun))

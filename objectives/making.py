@@ -30,7 +30,7 @@ class PoleCount(Quantity):
 
     of_pattern: ClassVar[bool] = True
 
-    def __init__(self, params: Params, plan: Plan) -> None:
+    def __init__(self, params: Params, plan: Plan) -> None:  # noqa: ARG002 (it reads the patterns alone)
         self.elements = 1
         self._of = part_names(params["of"])
 

@@ -1,7 +1,7 @@
 """Linear conditions of a problem as bilinear forms in the variables: what LPs and flips work on.
 
-Each condition is one form (its combination of pair rows, scaled), the improve's worth one more. With one part fixed every
-form is linear in the other part's variables; its slopes come from one product for all forms.
+Each condition is one form (its combination of pair rows, scaled), the improve's worth one more. With one part fixed
+every form is linear in the other part's variables; its slopes come from one product for all forms.
 """
 
 from __future__ import annotations
@@ -75,7 +75,6 @@ class ConditionForms:
         if not self.layout.linked:
             return np.zeros((self._forms.count, self.layout.count))
         return np.stack([0.5 * self.slope_change(n)[:, n] for n in range(self.layout.count)], axis=1)
-
 
 
 def _column(columns: sparse.csc_array, number: int) -> list[tuple[int, float]]:

@@ -26,7 +26,7 @@ Array = NDArray[np.float64]
 CHUNK = 50
 """Steps between two looks at the budget."""
 _RATE = 0.05
-_SHARPNESS = (2.0, 32.0)
+_SHARPNESS = (1.0, 8.0)
 _STEEPNESS = (1.0, 4.0)
 _MARGIN = 0.004
 """Conditions are aimed at this much above zero, so that rounding keeps them."""
@@ -96,15 +96,15 @@ class GradientDesign:
         if self.relaxed.problem.improves:
             short = jnp.maximum(dual - _STIFFNESS * (conditions - _aim(self._counts)), 0.0)
             return -worth + (short**2).sum() / (2.0 * _STIFFNESS), conditions
-        band = jnp.where(self._counts, 0.0, jnp.maximum(_INSIDE - conditions, 0.0))
-        push = jnp.where(self._counts, conditions, jnp.inf)
-        top = jnp.where(self._counts, conditions, -jnp.inf).max()
-        low = push.min()
-        spread = jax.lax.stop_gradient(jnp.where(jnp.isfinite(low), top - low, 0.0)) + 0.02
-        sharpness = _between(_SHARPNESS, progress)
-        worst = jax.nn.logsumexp(jnp.where(self._counts, -sharpness * conditions / spread, -jnp.inf)) * spread / sharpness
-        worst = jnp.where(jnp.isfinite(low), worst, 0.0)
-        return worst + _STIFFNESS * (band + 0.5 * band**2).sum(), conditions
+        counts = self.relaxed.problem.counts
+        band = jnp.maximum(_INSIDE - conditions[~counts], 0.0)
+        missed = _STIFFNESS * (band + 0.5 * band**2).sum()
+        push = conditions[counts]
+        if not counts.any():
+            return missed, conditions
+        spread = jax.lax.stop_gradient(push.max() - push.min()) + 0.02
+        sharpness = _between(_SHARPNESS, progress) / spread
+        return jax.nn.logsumexp(-sharpness * push) / sharpness + missed, conditions
 
     @cached_property
     def _advance(self) -> Callable[..., _State]:

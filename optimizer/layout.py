@@ -1,7 +1,7 @@
 """From variables to patterns: what of both parts is free, what moves together, what is given.
 
-One variable in [-1, 1] stands for an orbit of cells; a part's pattern is ``constant + sign * z[index]``. A mover that is
-the matched or the same part has no variables of its own but reads the base's.
+One variable in [-1, 1] stands for an orbit of cells; a part's pattern is ``constant + sign * z[index]``. A mover
+that is the matched or the same part has no variables of its own but reads the base's.
 """
 
 from __future__ import annotations

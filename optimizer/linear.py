@@ -1,7 +1,7 @@
 """Alternating linear programs: with one part fixed, conditions and worth are linear in the other part.
 
-Each program maximizes the least condition that counts (or the worth) over the relaxed pattern of one part, exactly; at a
-vertex at most as many variables are fractional as there are active conditions. Parts take turns until nothing improves.
+Each program maximizes the least condition that counts (or the worth) over the relaxed pattern of one part, exactly; at
+a vertex at most as many variables are fractional as there are active conditions. Parts take turns until nothing gains.
 """
 
 from __future__ import annotations

@@ -1,7 +1,7 @@
 """Local search on rounded patterns: tabu moves with exact incremental updates, for linear problems.
 
-With one part fixed every form is linear, so the effect of each single flip is known from the slopes, and of a set of flips
-on one part from their sum. After a move the values and the slopes are updated exactly, never recomputed.
+With one part fixed every form is linear, so the effect of each single flip is known from the slopes, and of a set of
+flips on one part from their sum. After a move the values and the slopes are updated exactly, never recomputed.
 """
 
 from __future__ import annotations

@@ -1,7 +1,7 @@
 """The portfolio: runs what measured best on each kind of problem and keeps the best rounded designs.
 
-A run is a fixed list of stages; each is a deterministic function of the seed, the stage's name and the designs kept so far.
-So a run that was stopped continues at the last finished stage and ends as the uninterrupted one would.
+A run is a list of stages; each is a deterministic function of the seed, the stage's number and the designs kept so
+far. So a run that was stopped continues at the last finished stage and ends as the uninterrupted one would.
 """
 
 from __future__ import annotations
@@ -55,7 +55,7 @@ def search(
     given: Sequence[tuple[Array, Array]] = (),
     pool: Pool | None = None,
     progress: Progress | None = None,
-    on_stage: Callable[[Pool, Progress], None] = lambda pool, progress: None,
+    on_stage: Callable[[Pool, Progress], None] | None = None,
 ) -> tuple[Pool, Progress, StopReason]:
     """Find rounded designs.
 
@@ -76,7 +76,7 @@ def search(
     pool, progress = pool or Pool(problem, layout), progress or Progress()
     stages = Stages(problem, layout, budget, pool, starts, given)
     if progress.stage == 0:
-        stages.obvious(generator(seed, "obvious"))
+        stages.obvious()
         budget.spend(1)
     if layout.count == 0:
         return pool, progress, StopReason.GIVEN
@@ -94,7 +94,8 @@ def search(
             return pool, progress, reason
         _note(pool, progress, budget)
         progress.stage += 1
-        on_stage(pool, progress)
+        if on_stage is not None:
+            on_stage(pool, progress)
         met = pool.best is not None and pool.best.evaluation.feasible
         if progress.stage >= 3 and progress.stale >= (_PATIENCE_MET if met else _PATIENCE_MISSED):
             break

@@ -65,7 +65,7 @@ class Stages:
         self._given = [mended(layout, layout.variables(a, b)) if layout.count else np.zeros(0) for a, b in given]
         self._coarse = layout.coarse()
 
-    def obvious(self, random: np.random.Generator) -> None:
+    def obvious(self) -> None:
         """Judge what is given and the obvious patterns, so that a run never ends with nothing."""
         for z in self._given:
             self.pool.add(z, "given")
@@ -104,7 +104,7 @@ class Stages:
     def _wants_relaxed(self, number: int, stale: int) -> bool:
         """Is it the turn of relaxed design in a problem that walks can search?"""
         best = self.pool.best
-        far = best is None or not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR
+        far = best is None or (not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR)
         if not self.problem.is_linear:
             return number % 2 == 1
         return (number == 1 and far) or stale in (2, 6)

@@ -9,6 +9,8 @@ from ..models.symmetry import IMAGES
 
 Index = NDArray[np.intp]
 Array = NDArray[np.float64]
+
+
 def orbits(shape: tuple[int, int], symmetry: str) -> tuple[Index, Array]:
     """Return for each cell the flat index of its orbit's first cell, and its sign against that cell.
 
@@ -25,4 +27,3 @@ def orbits(shape: tuple[int, int], symmetry: str) -> tuple[Index, Array]:
     first = images.argmin(axis=0)
     torn = ((images == cells) & (signs < 0.0)[:, None, None]).any(axis=0)
     return images.min(axis=0), np.where(torn, 0.0, signs[first])
-

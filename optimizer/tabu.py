@@ -144,7 +144,8 @@ class TabuSearch:
             # moves are only compared here: single precision is twice as fast; values and slopes stay in double
             z, slopes = walk.z.astype(jnp.float32), walk.slopes.astype(jnp.float32)
             single = -2.0 * z * slopes + 4.0 * tables.curvature.astype(jnp.float32)
-            both = single[:, first] + single[:, second] + 4.0 * z[first] * z[second] * tables.coupling.astype(jnp.float32)
+            facing = 4.0 * z[first] * z[second] * tables.coupling.astype(jnp.float32)
+            both = single[:, first] + single[:, second] + facing
             after = walk.values.astype(jnp.float32)[:, None] + jnp.concatenate([single, both], axis=1)
             scores = self._score(after, softness.astype(jnp.float32), violation.astype(jnp.float32))
             barred = walk.free > now

@@ -63,7 +63,7 @@ def _symmetrized(faces: tuple[Array, Array], random: np.random.Generator) -> tup
 
 
 def _region(size: Lattice, random: np.random.Generator) -> NDArray[np.bool_]:
-    """A random part of the face: blotches, one side of a line, a disc or a square near an edge, corner or the centre."""
+    """A random part of the face: blotches, one side of a line, a disc or a square at an edge, corner or the centre."""
     y, x = np.meshgrid(*(np.linspace(-0.5, 0.5, cells) for cells in size), indexing="ij")
     kind = random.integers(4)
     centre = random.choice([-0.5, 0.0, 0.5], size=2) + random.uniform(-0.1, 0.1, size=2)

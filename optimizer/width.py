@@ -37,8 +37,8 @@ def keeps_width(layout: Layout, z: Array) -> NDArray[np.bool_]:
 def mended(layout: Layout, z: Array) -> Array:
     """Round relaxed variables z (n,) and change as little as it takes to keep the pole width.
 
-    Cells that no brush reaches are reversed, all at once so that symmetry stays; where that does not settle, the relaxed
-    pattern is smoothed more and more before it is rounded.
+    Cells that no brush reaches are reversed, all at once so that symmetry stays; where that does not settle, the
+    relaxed pattern is smoothed more and more before it is rounded.
     """
     for level in range(_SMOOTHINGS):
         candidate = rounded(_smoothed(layout, z, level))
@@ -77,8 +77,8 @@ def _smoothed(layout: Layout, z: Array, level: int) -> Array:
 def moves(layout: Layout) -> tuple[Index, Array]:
     """What a local search may set at once.
 
-    At a pole width of one cell each variable alone; else windows one pole wide and one to a pole's width deep, each set to
-    either polarity.
+    At a pole width of one cell each variable alone; else windows one pole wide and one cell or a pole's width deep,
+    each set to either polarity.
 
     Returns:
         Variables of each move (m, w), padded by -1, and the value each is set to (m, w).

@@ -56,9 +56,9 @@ def read_run(path: Path) -> Run:
             _check_format(file, path)
             tree = {"/": _read_group(file)}
             file.visititems(
-                lambda name, item: tree.update({f"/{name}": _read_group(item)})
-                if isinstance(item, h5py.Group)
-                else None
+                lambda name, item: (
+                    tree.update({f"/{name}": _read_group(item)}) if isinstance(item, h5py.Group) else None
+                )
             )
         return run_from(tree)
     except (OSError, KeyError, ValueError, TypeError, RuntimeError, IndexError) as error:

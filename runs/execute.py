@@ -97,7 +97,7 @@ def execute(
     *,
     earlier: Run | None = None,
     starts: list[tuple[Array, Array]] | None = None,
-    keep: Callable[[Run], None] = lambda run: None,
+    keep: Watcher | None = None,
 ) -> Run:
     """Search under a spec and return the run; ``keep`` gets the state after each stage.
 
@@ -129,7 +129,8 @@ def execute(
         def on_stage(pool: Pool, progress: Progress) -> None:
             nonlocal last
             last = checkpoint.take(pool, progress, budget.used)
-            keep(_run(spec, problem, pool, progress, budget, last, StopReason.INTERRUPTED, began))
+            if keep is not None:
+                keep(_run(spec, problem, pool, progress, budget, last, StopReason.INTERRUPTED, began))
 
         pool, progress, reason = search(
             problem, layout, budget, spec.search.seed, spec.search.starts, given, pool, progress, on_stage

@@ -17,7 +17,7 @@ def watched() -> Iterator[Callable[[], bool]]:
     """
     asked = threading.Event()
 
-    def note(number: int, frame: FrameType | None) -> None:
+    def note(number: int, frame: FrameType | None) -> None:  # noqa: ARG001 (the signal module's interface)
         if asked.is_set():
             raise KeyboardInterrupt
         asked.set()

@@ -245,9 +245,7 @@ def _curve_variables(run: Run) -> tuple[Variable, ...]:
             message = f"curve {name!r} must share its scale {curve.scale_name!r} with the other curves over it"
             raise ValueError(message)
         attributes = {"spec_unit": curve.unit}
-        curves.append(
-            Variable(name, curve.values, ("design", curve.scale_name), SI_NAMES[curve.unit], attributes)
-        )
+        curves.append(Variable(name, curve.values, ("design", curve.scale_name), SI_NAMES[curve.unit], attributes))
     return (*scales.values(), *curves)
 
 

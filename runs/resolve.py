@@ -71,8 +71,7 @@ def columns_of(spec: Spec) -> tuple[Column, ...]:
     found: list[Column] = []
     for number, entry in enumerate((*spec.require, *spec.improve)):
         factor = FACTORS[entry.info.unit]
-        for element in range(entry.count):
-            found.append(_column(number, entry, element, factor))
+        found += [_column(number, entry, element, factor) for element in range(entry.count)]
     return tuple(found)
 
 
@@ -83,7 +82,7 @@ def params(entry: SpecEntry) -> Mapping[str, Any]:
 
 
 def _bare(key: Key) -> str:
-    """"gap_mm" -> "gap"."""
+    """ "gap_mm" -> "gap"."""
     suffix = "_" + key.unit
     return key.name.removesuffix(suffix) if key.unit != "1" else key.name
 
@@ -133,9 +132,7 @@ def _column(number: int, entry: SpecEntry, element: int, factor: float) -> Colum
         message = f"entry must be a require or an improve, received {type(entry).__name__}"
         raise TypeError(message)
     target = None if entry.targets is None else entry.targets[element] * factor
-    return Column(
-        number, entry.quantity, words, entry.info.unit, "improve", target, None, entry.sense or "toward", ""
-    )
+    return Column(number, entry.quantity, words, entry.info.unit, "improve", target, None, entry.sense or "toward", "")
 
 
 def _words(entry: SpecEntry, element: int) -> str:

@@ -120,9 +120,7 @@ def _print_verification(run: Run, console: Console) -> None:
     scatter = found.get("scatter")
     if scatter:
         share = 100.0 * scatter["share_all"]
-        console.print(
-            Text(f"Scatter: {share:.1f} % of {scatter['samples']} sampled pairs meet every requirement.")
-        )
+        console.print(Text(f"Scatter: {share:.1f} % of {scatter['samples']} sampled pairs meet every requirement."))
     for wrong in found.get("assembly", []):
         if wrong["dangerous"]:
             console.print(Text(f"wrong assembly, {wrong['name']}: {wrong['text']}"))

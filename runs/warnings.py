@@ -6,18 +6,17 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from ..models.part import Part
 from ..models.units import from_si
 from ..objectives.problem import Problem
 from ..optimizer.stopping import StopReason
 from .records import Design
-from .spec import Spec
+from .spec import PartSpec, Spec
 
 _RIM = 1e-9
 
 
-def warnings_of(
-    spec: Spec, problem: Problem, designs: Sequence[Design], reason: StopReason
-) -> tuple[str, ...]:
+def warnings_of(spec: Spec, problem: Problem, designs: Sequence[Design], reason: StopReason) -> tuple[str, ...]:
     """Return what the spec and its outcome call for, most important first."""
     found = ["IDEAL: sharp pole edges and full magnetization depth are assumed; a real part is weaker at its edges."]
     if designs and not designs[0].feasible:
@@ -36,19 +35,24 @@ def warnings_of(
         )
     if spec.conditions.lateral == "free":
         found.append("The mover is free sideways: ask for lateral_stiffness, or it may slide off the pose judged here.")
-    for name, part, part_spec in (("base", problem.base, spec.base), ("mover", problem.mover, spec.mover)):
-        rim_x, rim_y = (from_si(width, "mm") for width in part.rim)
-        if max(part.rim) > _RIM and part_spec.shape == "rectangle":
-            found.append(f"{name}: {rim_x:.3g} x {rim_y:.3g} mm beyond whole cells stay unmagnetized (x, y, both sides).")
-        if part_spec.material.from_memory:
-            found.append(
-                f"{name}: the numbers of {part_spec.material.name} are from memory; check them with your supplier."
-            )
-        if part_spec.material.recoil_permeability > 1.0:
-            found.append(
-                f"{name}: recoil permeability {part_spec.material.recoil_permeability:g} is stored but not modelled yet; "
-                "expect a few percent less force."
-            )
+    found += _of_part("base", problem.base, spec.base)
+    found += _of_part("mover", problem.mover, spec.mover)
     if any(np.isnan(design.values).any() for design in designs[:1]):
         found.append("A value that does not exist (no stand-off, no peak) counts as a missed requirement.")
     return tuple(found)
+
+
+def _of_part(name: str, part: Part, spec: PartSpec) -> list[str]:
+    """What one part's blank and material call for."""
+    found = []
+    rim = [from_si(width, "mm") for width in part.rim]
+    if max(part.rim) > _RIM and spec.shape == "rectangle":
+        found.append(f"{name}: {rim[0]:.3g} mm in x and {rim[1]:.3g} mm in y beyond whole cells stay unmagnetized.")
+    if spec.material.from_memory:
+        found.append(f"{name}: the numbers of {spec.material.name} are from memory; check them with your supplier.")
+    if spec.material.recoil_permeability > 1.0:
+        found.append(
+            f"{name}: recoil permeability {spec.material.recoil_permeability:g} is stored but not modelled yet; expect "
+            "a few percent less force."
+        )
+    return found

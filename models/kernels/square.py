@@ -22,7 +22,7 @@ FAR_SWITCH = 9.0
 """Centre distance, in cell widths, beyond which quadrature replaces the closed form."""
 
 KERNELS = ("e", "x", "y", "z", "xx", "yy", "xy", "zz")
-"""e: 1/r; x, y, z: components of (u, v, w)/r^3; xx, yy, xy, zz: their derivatives d(x)/du, d(y)/dv, d(x)/dv, d(z)/dw."""
+"""e: 1/r; x, y, z: components of (u, v, w)/r^3; xx, yy, xy, zz: derivatives d(x)/du, d(y)/dv, d(x)/dv, d(z)/dw."""
 
 PARITY: dict[str, tuple[int, int]] = {
     "e": (1, 1), "z": (1, 1), "zz": (1, 1), "xx": (1, 1), "yy": (1, 1), "x": (-1, 1), "y": (1, -1), "xy": (-1, -1),

@@ -11,8 +11,8 @@ import click
 
 @click.command("design")
 @click.argument("spec", type=click.Path(path_type=Path))
-@click.option("-o", "output", type=click.Path(path_type=Path), metavar="RUN", help="Archive to write; SPEC's stem .h5.")
-@click.option("--from", "start_from", type=click.Path(path_type=Path), metavar="RUN", help="Evaluate and start from it.")
+@click.option("-o", "output", type=click.Path(path_type=Path), metavar="RUN", help="Archive to write [SPEC.h5].")
+@click.option("--from", "start_from", type=click.Path(path_type=Path), metavar="RUN", help="Begin from its designs.")
 @click.option("--resume", is_flag=True, help="Continue an interrupted run in the archive, or start it.")
 @click.option("--replace", is_flag=True, help="Overwrite an existing archive.")
 @click.option("--json", "as_json", is_flag=True, help="Print one JSON object to stdout instead.")

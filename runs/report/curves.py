@@ -21,9 +21,7 @@ _BOUND = "#8a4b08"
 _WIDE_RANGE = 12.0
 
 
-def force_gap_figure(
-    curve: Curve, position: int, marks: Sequence[ForceMark], band: Mapping[str, Any] | None
-) -> str:
+def force_gap_figure(curve: Curve, position: int, marks: Sequence[ForceMark], band: Mapping[str, Any] | None) -> str:
     """Return the curve of one design as inline SVG.
 
     Args:

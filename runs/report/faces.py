@@ -49,9 +49,7 @@ def _figure(face: Face, drawing: Drawing) -> str:
     else:
         caption = f"<strong>{side.capitalize()}</strong>, {_VIEWS[side]}. {_facts(face.part, face.pattern)}"
     style = f"width:{drawing.width:.1f}mm"
-    return (
-        f'<figure style="{style}"><div class="scroll">{drawing.svg}</div><figcaption>{caption}</figcaption></figure>'
-    )
+    return f'<figure style="{style}"><div class="scroll">{drawing.svg}</div><figcaption>{caption}</figcaption></figure>'
 
 
 def _facts(part: Part, pattern: NDArray[np.int8]) -> str:

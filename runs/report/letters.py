@@ -59,9 +59,7 @@ def _on_pole(pole: NDArray[np.bool_], corner: tuple[int, int], polarity: int, ce
     while len(chosen) < _MOST_A_POLE and away.max() * cell_mm > max(_SPACING, 4.0 * height):
         chosen.append(int(np.argmax(away)))
         away = np.minimum(away, _distance(places, chosen[-1]))
-    return [
-        Letter(float(places[n, 0]) + corner[0], float(places[n, 1]) + corner[1], polarity, height) for n in chosen
-    ]
+    return [Letter(float(places[n, 0]) + corner[0], float(places[n, 1]) + corner[1], polarity, height) for n in chosen]
 
 
 def _widest_block(pole: NDArray[np.bool_]) -> int:

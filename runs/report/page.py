@@ -116,7 +116,7 @@ def _maps(extras: ReportExtras) -> str:
     if not extras.maps:
         return ""
     shown = [
-        f"<h3>{escape(field_map.title)}</h3>\n<figure class=\"plotbox\">{svg}<figcaption>{escape(field_map.note)}"
+        f'<h3>{escape(field_map.title)}</h3>\n<figure class="plotbox">{svg}<figcaption>{escape(field_map.note)}'
         "</figcaption></figure>"
         for field_map, svg in zip(extras.maps, field_figure(extras.maps, "map"), strict=True)
     ]
@@ -132,7 +132,7 @@ def _checks(run: Run, design: Design) -> str:
     found = run.verification
     if found is None:
         return ""
-    out = ['<section>\n<h2>Checks</h2>']
+    out = ["<section>\n<h2>Checks</h2>"]
     if design.id != run.designs[0].id:
         out.append(f"<p>Verified was the best design, {escape(run.designs[0].id)}.</p>")
     second = found.get("second_path")
@@ -140,7 +140,7 @@ def _checks(run: Run, design: Design) -> str:
         word = "agrees" if second["ok"] else "DISAGREES"
         largest = "unknown" if second["largest"] is None else f"{second['largest']:.1e}"
         out.append(
-            f'<h3>Second physics path: {word}</h3>\n'
+            f"<h3>Second physics path: {word}</h3>\n"
             '<p class="intro">Another formula and other code give the same numbers: '
             f"largest relative difference {largest}, allowed {second['tolerance']:.0e}.</p>"
         )

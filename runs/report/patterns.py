@@ -194,9 +194,7 @@ def _poles(part: Part, pattern: NDArray[np.int8], place: _Place, hatch: str) -> 
 def _letters(part: Part, pattern: NDArray[np.int8], place: _Place) -> list[str]:
     (ny, nx), north, out = part.shape, 1 if place.side == "base" else -1, []
     for letter in place_letters(pattern, part.cell * 1e3 * place.scale):
-        x, y = place.at(
-            (letter.column - (nx - 1) / 2.0) * part.cell, (letter.row - (ny - 1) / 2.0) * part.cell
-        )
+        x, y = place.at((letter.column - (nx - 1) / 2.0) * part.cell, (letter.row - (ny - 1) / 2.0) * part.cell)
         name, ink = ("N", "white") if letter.polarity == north else ("S", INK)
         halo = "" if name == "N" else f'stroke="{SOUTH}" stroke-width="{0.16 * letter.height:.2f}" paint-order="stroke"'
         out.append(_text(x, y + 0.5 * letter.height, name, letter.height / 0.72, ink, "middle", bold=True, more=halo))

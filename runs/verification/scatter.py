@@ -126,9 +126,7 @@ def _values(entry: Asked, state: State, draws: Draws, pair: Sampled) -> Array:
     )  # fmt: skip
 
 
-def _row(
-    entry: Asked, state: State, sampled: Draws, values: Array
-) -> tuple[dict[str, Any], NDArray[np.bool_], Array]:
+def _row(entry: Asked, state: State, sampled: Draws, values: Array) -> tuple[dict[str, Any], NDArray[np.bool_], Array]:
     """The record of one require, which pairs meet it, and its values for all draws."""
     count = sampled.count
     own, used = values, values[:count]

@@ -120,9 +120,7 @@ def _nearest(entry: Asked) -> float:
     return float(np.min(np.asarray(keys["gap"] if "gap" in keys else keys["between"], dtype=np.float64)))
 
 
-def _scale(
-    entry: Asked, state: State, second: SecondPath, reported: Array, largest: float
-) -> tuple[Array, str]:
+def _scale(entry: Asked, state: State, second: SecondPath, reported: Array, largest: float) -> tuple[Array, str]:
     """What a difference of each element is relative to [SI], and in words."""
     ones = np.ones(entry.elements)
     cell = state.base.cell
@@ -172,9 +170,7 @@ def _stand_off(
     return zero, largest / max(slope, 1e-300) + 1e-3 * between[1], words
 
 
-def _peak(
-    entry: Asked, state: State, second: SecondPath, reported: float, largest: float
-) -> tuple[float, float, str]:
+def _peak(entry: Asked, state: State, second: SecondPath, reported: float, largest: float) -> tuple[float, float, str]:
     """Largest force of the asked sign on a modest grid and where the design path has its extreme."""
     sign = 1.0 if entry.params["which"] == "repulsion" else -1.0
     curve = _kernel_curve(state)
@@ -186,9 +182,7 @@ def _peak(
     return value, largest, "the largest force on the curve"
 
 
-def _slide(
-    entry: Asked, state: State, second: SecondPath, reported: float, largest: float
-) -> tuple[float, float, str]:
+def _slide(entry: Asked, state: State, second: SecondPath, reported: float, largest: float) -> tuple[float, float, str]:
     """Largest resistance on a modest grid of offsets and where the design path has its extreme."""
     del reported
     keys = entry.params
@@ -212,9 +206,7 @@ def _slide(
     return value, largest * (1.0 + keys["friction"]), "the largest force on the curve, friction added"
 
 
-def _work(
-    entry: Asked, state: State, second: SecondPath, reported: float, largest: float
-) -> tuple[float, float, str]:
+def _work(entry: Asked, state: State, second: SecondPath, reported: float, largest: float) -> tuple[float, float, str]:
     """Gauss quadrature of the second path's hold where it is positive, between the zeros of the force."""
     del reported
     low, high = entry.params["between"]

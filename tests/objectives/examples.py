@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Any
+from typing import Any, NamedTuple
 
 import jax
 import jax.numpy as jnp
@@ -87,12 +87,21 @@ def closed(base: Part, mover: Part, a: NDArray[np.int8], b: NDArray[np.int8], ro
     return pair_values(base, mover, a.astype(np.float64), b.astype(np.float64), rows)
 
 
+class Tables(NamedTuple):
+    """Arrays that compiled functions take as arguments: as constants they would take long to compile."""
+
+    forms: FourierForms
+    linear_base: jax.Array
+    linear_mover: jax.Array
+
+
 class Compiled:
     """The surrogate of a problem's only quantity as a search sees it."""
 
     def __init__(self, asked: Problem) -> None:
         self.asked = asked
-        self.tables = fourier_forms(asked.forms)
+        linear = (jnp.asarray(matrix) for matrix in (asked.linear_base, asked.linear_mover))
+        self.tables = Tables(fourier_forms(asked.forms), *linear)
         self.one = jax.jit(self.surrogate)
         self.many = jax.jit(jax.vmap(self.surrogate, in_axes=(None, 0, 0)))
         self.slope = jax.jit(jax.value_and_grad(self._weighted, argnums=(1, 2)))
@@ -102,14 +111,14 @@ class Compiled:
         """The quantity."""
         return self.asked.quantities[0]
 
-    def surrogate(self, tables: FourierForms, a: jax.Array, b: jax.Array) -> jax.Array:
+    def surrogate(self, tables: Tables, a: jax.Array, b: jax.Array) -> jax.Array:
         """Values [SI], shape (elements,), of patterns a (ny, nx) and b (my, mx)."""
-        pair = values(tables, transform_sizes(self.asked.forms), a, b)
-        linear = self.asked.linear_base @ a.reshape(-1) + self.asked.linear_mover @ b.reshape(-1)
+        pair = values(tables.forms, transform_sizes(self.asked.forms), a, b)
+        linear = tables.linear_base @ a.reshape(-1) + tables.linear_mover @ b.reshape(-1)
         found: jax.Array = self.quantity.surrogate(Response(jnp, pair, linear, a, b))
         return found
 
-    def _weighted(self, tables: FourierForms, a: jax.Array, b: jax.Array, weights: jax.Array) -> jax.Array:
+    def _weighted(self, tables: Tables, a: jax.Array, b: jax.Array, weights: jax.Array) -> jax.Array:
         return self.surrogate(tables, a, b) @ weights
 
 

@@ -8,12 +8,11 @@ import jax
 import jax.numpy as jnp
 import numpy as np
 import pytest
-from polewright.models.pair_fourier import FourierForms
 from polewright.objectives.catalogue import CATALOGUE
 
 from ..guard_pages import count_for, guarded, run_apart
 from ..models.parts import plate
-from .examples import Compiled, problem
+from .examples import Compiled, Tables, problem
 
 pytestmark = pytest.mark.skipif(not sys.platform.startswith("linux"), reason="forbidden pages are made for Linux here")
 
@@ -28,7 +27,7 @@ def guarded_surrogates() -> None:
     for name in CATALOGUE:
         asked = Compiled(problem(name, part, part))
 
-        def loss(tables: FourierForms, z: jax.Array, asked: Compiled = asked) -> jax.Array:
+        def loss(tables: Tables, z: jax.Array, asked: Compiled = asked) -> jax.Array:
             return asked.surrogate(tables, 2.0 * z - 1.0, 1.0 - 2.0 * z).sum()
 
         many = jax.jit(jax.vmap(jax.value_and_grad(loss, argnums=1), in_axes=(None, 0)))

@@ -17,19 +17,39 @@ from polewright.optimizer.layout import Face, Layout, layout
 from ..models.parts import plate
 
 Array = NDArray[np.float64]
+Kind = Literal["at_least", "at_most", "equal_to"]
 MM = 1e-3
 
-# DESIGN section 7: what a pattern with each symmetry satisfies, as (image of the cell (y, x) on an (ny, nx) lattice, sign).
-Image = tuple[Callable[[int, int, int, int], tuple[int, int]], int]
+# DESIGN section 7: what a pattern with each symmetry satisfies, as (image of the cell (y, x) on a lattice, sign)
+Shape = tuple[int, ...]
+Image = tuple[Callable[[int, int, Shape], tuple[int, int]], int]
+
+
+def _across_x(y: int, x: int, shape: Shape) -> tuple[int, int]:
+    return y, shape[1] - 1 - x
+
+
+def _across_y(y: int, x: int, shape: Shape) -> tuple[int, int]:
+    return shape[0] - 1 - y, x
+
+
+def _half_turn(y: int, x: int, shape: Shape) -> tuple[int, int]:
+    return shape[0] - 1 - y, shape[1] - 1 - x
+
+
+def _quarter_turn(y: int, x: int, shape: Shape) -> tuple[int, int]:
+    return shape[1] - 1 - x, y
+
+
 RULES: dict[str, tuple[Image, ...]] = {
     "none": (),
-    "half-turn": ((lambda y, x, ny, nx: (ny - 1 - y, nx - 1 - x), 1),),
-    "quarter-turn": ((lambda y, x, ny, nx: (nx - 1 - x, y), 1),),
-    "even-x": ((lambda y, x, ny, nx: (y, nx - 1 - x), 1),),
-    "even-y": ((lambda y, x, ny, nx: (ny - 1 - y, x), 1),),
-    "odd-x": ((lambda y, x, ny, nx: (y, nx - 1 - x), -1),),
-    "odd-y": ((lambda y, x, ny, nx: (ny - 1 - y, x), -1),),
-    "odd-xy": ((lambda y, x, ny, nx: (y, nx - 1 - x), -1), (lambda y, x, ny, nx: (ny - 1 - y, x), -1)),
+    "half-turn": ((_half_turn, 1),),
+    "quarter-turn": ((_quarter_turn, 1),),
+    "even-x": ((_across_x, 1),),
+    "even-y": ((_across_y, 1),),
+    "odd-x": ((_across_x, -1),),
+    "odd-y": ((_across_y, -1),),
+    "odd-xy": ((_across_x, -1), (_across_y, -1)),
 }
 
 
@@ -58,14 +78,12 @@ def both_free(base: Part, mover: Part, symmetry: str = "none", brush: int = 1) -
     return layout(free(base, symmetry, brush), free(mover, symmetry, brush))
 
 
-def require(
-    quantity: str, kind: Literal["at_least", "at_most", "equal_to"], value: float, within: float = 0.0, **params: Any
-) -> Require:
+def require(quantity: str, kind: Kind, value: float, within: float = 0.0, **params: Any) -> Require:
     """A require of one element [SI]."""
     return Require(quantity, params, Bound(kind, np.array([value]), np.array([within])))
 
 
-def axial(kind: Literal["at_least", "at_most", "equal_to"], gap_mm: float, value: float, within: float = 0.0) -> Require:
+def axial(kind: Kind, gap_mm: float, value: float, within: float = 0.0) -> Require:
     """A require of F_z [N] at one gap."""
     return require("axial_force", kind, value, within, gap=gap_mm * MM, offset=(0.0, 0.0))
 

@@ -1,4 +1,4 @@
-"""Seeds, stopping, the pool, and searches whose budget is tiny: a design, the right reason, no more than a batch over."""
+"""Seeds, stopping, the pool, and tiny budgets: they end with a design, the right reason and at most a batch over."""
 
 from __future__ import annotations
 
@@ -27,7 +27,7 @@ BATCH = max(tabu.STARTS * tabu.CHUNK, STARTS * gradient.CHUNK)
 @pytest.fixture(autouse=True)
 def ranks_allowed() -> Iterator[None]:
     """As in the tests of the walk itself."""
-    with jax.numpy_rank_promotion("allow"):  # type: ignore[no-untyped-call]
+    with jax.numpy_rank_promotion("allow"):
         yield
 
 
@@ -84,6 +84,16 @@ def test_tiny_budgets_of_problems_that_are_not_linear(evaluations: int) -> None:
     assert reason is StopReason.EVALUATIONS
     assert budget.used <= evaluations + BATCH
     assert pool.best is not None
+
+
+def test_a_pole_width_alone_may_be_asked_for() -> None:
+    # it is met by construction, so that the search has no condition at all
+    part = plate(6, 6)
+    problem = Problem(part, part, [require("narrowest_pole", "at_least", 2e-3, of="both")], [])
+    found = both_free(part, part, brush=2)
+    pool, _, _ = search(problem, found, Budget(3000), seed=1, starts=STARTS)
+    assert pool.best is not None
+    assert pool.best.evaluation.feasible
 
 
 def test_a_cap_in_seconds_ends_a_run() -> None:

@@ -46,7 +46,7 @@ CASES = linear_cases()
 @pytest.fixture(autouse=True)
 def ranks_allowed() -> Iterator[None]:
     """The walk adds numbers of variables to numbers of forms and variables; users run with ranks allowed."""
-    with jax.numpy_rank_promotion("allow"):  # type: ignore[no-untyped-call]
+    with jax.numpy_rank_promotion("allow"):
         yield
 
 
@@ -87,8 +87,8 @@ def test_tabu_carries_exact_values_and_returns_its_best(name: str) -> None:
     for walk, softness, violation in last:
         for n in range(len(softness)):
 
-            def judged(z: Array, price: tuple[float, float] = (softness[n], violation[n])) -> float:
-                return float(search._score(jnp.asarray(forms.values(z)), *price))
+            def judged(z: Array, price: tuple[Array, Array] = (softness[n], violation[n])) -> float:
+                return float(search._score(jnp.asarray(forms.values(z)), jnp.asarray(price[0]), jnp.asarray(price[1])))
 
             z, best_z = np.asarray(walk.z[n]), np.asarray(walk.best_z[n])
             assert (np.abs(z) == 1.0).all()

@@ -1,4 +1,4 @@
-"""Layouts: symmetries, linked movers, given cells and what the searches read off them, against plain loops over cells."""
+"""Layouts: symmetries, linked movers, given cells and what searches read off them, against plain loops over cells."""
 
 from __future__ import annotations
 
@@ -41,7 +41,7 @@ def own_opposite(shape: tuple[int, int], rule: str) -> NDArray[np.bool_]:
         while todo:
             y, x, sign = todo.pop()
             for move, factor in RULES[rule]:
-                found = (*move(y, x, *shape), sign * factor)
+                found = (*move(y, x, shape), sign * factor)
                 if found not in reached:
                     reached.add(found)
                     todo.append(found)
@@ -52,7 +52,7 @@ def own_opposite(shape: tuple[int, int], rule: str) -> NDArray[np.bool_]:
 def assert_obeys(pattern: Array, mask: NDArray[np.bool_], rule: str) -> None:
     for y, x in np.argwhere(mask):
         for move, sign in RULES[rule]:
-            assert pattern[move(int(y), int(x), *pattern.shape)] == sign * pattern[y, x]
+            assert pattern[move(int(y), int(x), pattern.shape)] == sign * pattern[y, x]
 
 
 def test_all_symmetries_of_the_contract_are_known() -> None:
@@ -150,7 +150,7 @@ def test_given_cells_stay_and_bring_their_images_along(rule: str) -> None:
     for _ in range(4):
         for (y, x), value in list(orbit.items()):
             for move, sign in RULES[rule]:
-                orbit[move(y, x, 4, 4)] = sign * value
+                orbit[move(y, x, (4, 4))] = sign * value
     for z in (np.ones(found.count), -np.ones(found.count)):
         a, _ = found.patterns(z)
         for cell, value in orbit.items():

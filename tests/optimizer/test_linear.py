@@ -14,7 +14,7 @@ from scipy.optimize import linprog
 
 from ..models import references as ref
 from ..models.parts import plate
-from .problems import MM, both_free, free, given, most_held, near_far, profile, signs
+from .problems import MM, axial, both_free, free, given, most_held, near_far, profile, signs
 
 
 def test_enumerated_partner_of_4_by_4() -> None:
@@ -82,8 +82,6 @@ def test_improve_under_bounds_agrees_with_an_interior_point_solver() -> None:
 
 
 def test_bounds_that_nothing_meets_are_missed_by_as_little_as_possible() -> None:
-    from .problems import axial
-
     part = plate(5, 5)
     problem = Problem(part, part, [axial("at_most", 0.3, -1e3)], [most_held(0.5)])
     found = layout(free(part), given(part, np.ones(part.shape)))

@@ -8,7 +8,7 @@ from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 from numpy.typing import NDArray
 from polewright.models.part import Part
-from polewright.optimizer.layout import Layout, layout
+from polewright.optimizer.layout import Face, Layout, layout
 from polewright.optimizer.width import keeps_width, mended, moves, rounded
 
 from ..models.parts import plate
@@ -59,7 +59,7 @@ def test_mended_patterns_keep_width_and_symmetry(blank: str, rule: str, brush: i
     assert paintable(pattern, part.mask, brush)
     for y, x in np.argwhere(part.mask):
         for move, sign in RULES[rule]:
-            assert pattern[move(int(y), int(x), *pattern.shape)] == sign * pattern[y, x]
+            assert pattern[move(int(y), int(x), pattern.shape)] == sign * pattern[y, x]
 
 
 def test_what_keeps_the_width_is_not_changed() -> None:
@@ -85,8 +85,6 @@ def test_keeps_width_judges_each_design_and_each_part(name: str, brush: int) -> 
 
 
 def test_given_cells_are_as_wide_as_they_are_given() -> None:
-    from polewright.optimizer.layout import Face
-
     part = plate(8, 8)
     known = np.full(part.shape, np.nan)
     known[3, 3] = -1.0  # one cell of the other pole in the middle of a free face
