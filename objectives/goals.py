@@ -45,8 +45,8 @@ class Improve:
 def relative_margins(bound: Bound, values: Array, unit: str) -> Array:
     """Relative margin of each element; >= 0 is met, -inf where the value does not exist.
 
-    (value - bound) / max(|bound|, scale), mirrored for a ceiling, (within - |value - target|) / max(|target|, scale) for
-    a target. Without a scale of the spec's own, an element whose bound is 0 takes the largest size seen on the list.
+    (value - bound) / max(|bound|, scale), mirrored for a ceiling; (within - |value - target|) / max(|target|, scale)
+    for a target. Without a scale of its own, an element whose bound is 0 takes the largest size seen on the list.
 
     Args:
         bound: What is asked [SI].

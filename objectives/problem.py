@@ -1,7 +1,8 @@
 """A problem: two parts, what is required and what is to be improved, ready for a search and for exact judgement.
 
 For a search every require becomes conditions (met when >= 0, of comparable size). Conditions that are linear in the
-pair rows are collected in one matrix; the others are functions of the response. What is reported comes from ``exact`` alone.
+pair rows are collected in one matrix; the others are functions of the response. What is reported comes from ``exact``
+alone.
 """
 
 from __future__ import annotations

@@ -82,7 +82,7 @@ def params(entry: SpecEntry) -> Mapping[str, Any]:
 
 
 def _bare(key: Key) -> str:
-    """ "gap_mm" -> "gap"."""
+    """Drop the unit: gap_mm becomes gap."""
     suffix = "_" + key.unit
     return key.name.removesuffix(suffix) if key.unit != "1" else key.name
 

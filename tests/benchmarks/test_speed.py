@@ -117,8 +117,8 @@ def test_a_batch_against_single_values(capsys: Capture) -> None:
 
 
 def test_against_the_force_of_the_field_library(capsys: Capture) -> None:
-    """One force of two 6 x 6 patterns; the library meshes the target to about 1e-3, we are exact."""
-    part = plate(6, 6)
+    """One force of two 4 x 4 patterns; the library meshes the target to about 1e-3, we are exact."""
+    part = plate(4, 4)
     a, b = noise(part, 1), noise(part, 2)
     forms = pair_forms(part, part, [Row("fz", 1.0 * MM)])
     sizes, tables = transform_sizes(forms), fourier_forms(forms)
@@ -130,7 +130,7 @@ def test_against_the_force_of_the_field_library(capsys: Capture) -> None:
 
     ours, whole = least([lambda: compiled(tables, x, y), built], rounds=3, repeats=5)
     (theirs,) = least([lambda: library_force(part, part, a, b, 1.0 * MM, 0.0, 0.0, 1000)], rounds=1, repeats=1)
-    show(capsys, f"one force of (6 x 6)^2: library {theirs * 1e3:.0f} ms, {theirs / ours:.0f} times an evaluation")
+    show(capsys, f"one force of (4 x 4)^2: library {theirs * 1e3:.0f} ms, {theirs / ours:.0f} times an evaluation")
     show(capsys, f"and {theirs / whole:.0f} times the same with its tables built anew")
     assert ours < theirs
 

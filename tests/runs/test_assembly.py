@@ -12,7 +12,7 @@ from polewright.runs.verification.asked import asked_of
 from polewright.runs.verification.assembly import _ways, assembly
 from polewright.runs.verification.state import State
 
-from .verified import HEAD, blocks, require, run_of, spec_of, stripes
+from .verified import HEAD, blocks, require, run_of, silent, spec_of, stripes
 
 FREE = '[conditions]\nlateral = "free"\n'
 HOLD = require("holding_force", "at_least = 1.0", gap_mm=0.3)
@@ -23,7 +23,7 @@ def ways(spec: Spec, a: NDArray[np.int8], b: NDArray[np.int8]) -> dict[str, dict
     """Return the records by name."""
     run = run_of(spec, a, b)
     state = State(run.base, run.mover, a.astype(float), b.astype(float))
-    records = assembly(spec, asked_of(spec, run.base, run.mover), state, lambda share: None)
+    records = assembly(spec, asked_of(spec, run.base, run.mover), state, silent)
     return {record["name"]: record for record in records}
 
 

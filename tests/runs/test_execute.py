@@ -256,8 +256,7 @@ def test_watch_and_keep_see_readable_states(tmp_path: Path) -> None:
         assert stored.evaluations == run.evaluations
         seen.append(run)
 
-    text = SEARCHED.replace("40000", "4000")
-    last = design(write(tmp_path / "s.toml", text), output=tmp_path / "s.h5", watch=watch)
+    last = design(write(tmp_path / "s.toml", SEARCHED), output=tmp_path / "s.h5", watch=watch)
     assert seen
     assert all(not run.complete for run in seen)
     best = [run.designs[0].worst_margin for run in [*seen, last]]

@@ -62,7 +62,7 @@ side = "back"
 distance_mm = 6.0
 at_most = 12.0
 """
-    one, other = archives(tmp_path, spec_text(5, cell=1.0, wishes=wishes, search="starts = 4\nevaluations = 3000"))
+    one, other = archives(tmp_path, spec_text(5, cell=1.0, wishes=wishes, search="starts = 4\nevaluations = 1500"))
     assert differences(one, other) == []
 
 

@@ -166,7 +166,7 @@ def test_given_an_archive_it_is_stored_there(tmp_path: Path) -> None:
     path = tmp_path / "run.h5"
     write_run(held(), path)
     told: list[float] = []
-    returned = polewright.verify(path, "d1", lambda what, share: told.append(share))
+    returned = polewright.verify(path, "d1", lambda _, share: told.append(share))
     assert read_run(path).verification == returned.verification
     assert told == sorted(told)
     assert told[-1] == pytest.approx(1.0)
@@ -199,7 +199,7 @@ def test_command_refuses_bad_input(tmp_path: Path, capsys: pytest.CaptureFixture
 
 
 def test_interrupted_the_archive_stays_as_it_was(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    def stop(*arguments: object) -> dict[str, object]:
+    def stop(*_: object) -> dict[str, object]:
         raise KeyboardInterrupt
 
     path = tmp_path / "run.h5"
