@@ -21,7 +21,7 @@ from .relaxed import Relaxed
 from .scoring import score
 from .stopping import Budget
 from .tabu import STARTS, TabuSearch, affordable
-from .textures import composites, noise, perturbed
+from .textures import composites, crossed, noise, perturbed
 from .width import keeps_width, mended, rounded
 
 Array = NDArray[np.float64]
@@ -31,6 +31,10 @@ _DRAWN = 800
 _FIRST_WALK, _WALK = 1000, 750
 _SOFTNESS = np.geomspace(0.04, 0.08, STARTS)
 _PARENTS = 8
+_SPREAD = 2.0
+"""Mean rank of the designs that walks start from."""
+_CROSSED = 4
+"""One start in as many is a design with a window of another one."""
 _JUDGED = STARTS
 """Designs of a stage that are judged exactly, best first by the search's own score."""
 _POLISHED = 3
@@ -155,8 +159,14 @@ class Stages:
         fresh = STARTS if number == 0 else STARTS // 4 if stale >= 4 else 0
         starts = list(self._best_drawn(layout, random, fresh))
         for n in range(STARTS - fresh):
-            z = known[n % len(known)]
-            starts.append(perturbed(layout, z, random))
+            z = known[min(int(random.exponential(_SPREAD)), len(known) - 1)]
+            if n % _CROSSED:
+                starts.append(perturbed(layout, z, random))
+                continue
+            other = known[int(random.integers(len(known)))]
+            # a design and its reverse are the same: take the one that is nearer
+            other = -other if self.problem.reverses and (other == z).mean() < 0.5 else other
+            starts.append(crossed(layout, z, other, random))
         violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
         steps = _FIRST_WALK if number == 0 else _WALK
         found = tabu.run(np.stack(starts), random, self.budget, steps, _SOFTNESS, violation)

@@ -125,3 +125,17 @@ def perturbed(layout: Layout, z: Array, random: np.random.Generator) -> Array:
             window *= flips[:tall, :wide] if kind == 2 else -1.0
     out = layout.variables(patterns[0], patterns[1])
     return np.where(out == 0.0, z, np.where(out > 0.0, 1.0, -1.0))
+
+
+def crossed(layout: Layout, z: Array, other: Array, random: np.random.Generator) -> Array:
+    """Put a window of another design into a rounded one, on both parts alike."""
+    patterns = [pattern.copy() for pattern in layout.patterns(z)]
+    sources = layout.patterns(other)
+    share, at = random.uniform(0.25, 0.65, size=2), random.uniform(size=2)
+    for pattern, source in zip(patterns, sources, strict=True):
+        rows, columns = pattern.shape
+        tall, wide = max(int(share[0] * rows), 1), max(int(share[1] * columns), 1)
+        y, x = int(at[0] * (rows - tall + 1)), int(at[1] * (columns - wide + 1))
+        pattern[y : y + tall, x : x + wide] = source[y : y + tall, x : x + wide]
+    out = layout.variables(patterns[0], patterns[1])
+    return np.where(out == 0.0, z, np.where(out > 0.0, 1.0, -1.0))
