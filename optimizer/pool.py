@@ -13,7 +13,8 @@ from .width import keeps_width
 
 Array = NDArray[np.float64]
 
-_LARGEST = 64
+_LARGEST = 48
+"""Designs kept of each island."""
 _DISTINCT = 0.01
 """Designs count as distinct when more than this fraction of the free cells differs."""
 
@@ -25,11 +26,13 @@ class Candidate:
     Attributes:
         z: Variables, -1 and +1, shape (n,).
         origin: Which kind of search found it.
+        island: Number of the population that it belongs to; walks cross designs of one island only.
         evaluation: Its exact judgement.
     """
 
     z: Array
     origin: str
+    island: int
     evaluation: Evaluation
 
     @property
@@ -59,22 +62,30 @@ class Pool:
         """The best design so far."""
         return self.candidates[0] if self.candidates else None
 
-    def add(self, z: Array, origin: str) -> None:
+    def best_on(self, island: int) -> Candidate | None:
+        """The best design of one island."""
+        return next((candidate for candidate in self.candidates if candidate.island == island), None)
+
+    def add(self, z: Array, origin: str, island: int = 0) -> None:
         """Judge rounded variables exactly and keep them if they are among the best; repeats are ignored."""
         key = np.packbits(z > 0.0).tobytes()
         if key in self._seen or not keeps_width(self.layout, z[None])[0]:
             return
         self._seen.add(key)
         a, b = self.layout.patterns(z)
-        self.candidates.append(Candidate(z.copy(), origin, self.problem.exact(a, b)))
+        self.candidates.append(Candidate(z.copy(), origin, island, self.problem.exact(a, b)))
         self.candidates.sort(key=lambda candidate: candidate.rank, reverse=True)
-        del self.candidates[_LARGEST:]
+        mine = [n for n, candidate in enumerate(self.candidates) if candidate.island == island]
+        if len(mine) > _LARGEST:
+            del self.candidates[mine[-1]]
 
-    def distinct(self, count: int) -> list[Candidate]:
-        """Up to ``count`` of the best designs, each apart from all better ones."""
+    def distinct(self, count: int, island: int | None = None) -> list[Candidate]:
+        """Up to ``count`` of the best designs, of one island or of all, each apart from all better ones."""
         apart = max(_DISTINCT * self.layout.count, 1.0)
         found: list[Candidate] = []
         for candidate in self.candidates:
+            if island is not None and candidate.island != island:
+                continue
             if all(self._distance(candidate.z, other.z) > apart for other in found):
                 found.append(candidate)
             if len(found) == count:

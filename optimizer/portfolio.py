@@ -23,8 +23,10 @@ from .stopping import Budget, StopReason
 Array = NDArray[np.float64]
 
 _ROUNDS = 40
-_PATIENCE_MET, _PATIENCE_MISSED = 4, 10
+_PATIENCE_MET, _PATIENCE_MISSED = 5, 20
 """Rounds without a gain that end a run whose best design meets every require, or does not."""
+_ISLAND_PATIENCE = 3
+"""Rounds without a gain that end an island: a new population finds other basins sooner than an old one leaves its own."""
 _GAIN = 1e-3
 """Smallest relative gain of the score that counts."""
 
@@ -37,12 +39,20 @@ class Progress:
         stage: Stages finished.
         stale: Rounds since the last gain.
         mark: Rank that the next gain is measured from.
+        island: Number of the population that is being bred.
+        age: Rounds that it has been bred for.
+        island_stale: Rounds since its last gain.
+        island_mark: Rank that its next gain is measured from.
         history: Rows (evaluations, worst margin, score) after each stage.
     """
 
     stage: int = 0
     stale: int = 0
     mark: tuple[bool, float] = (False, -np.inf)
+    island: int = 0
+    age: int = 0
+    island_stale: int = 0
+    island_mark: tuple[bool, float] = (False, -np.inf)
     history: list[tuple[float, float, float]] = field(default_factory=list)
 
 
@@ -88,7 +98,7 @@ def search(
         return pool, progress, StopReason.PROVEN if complete else budget.reason() or StopReason.EVALUATIONS
     while progress.stage < _ROUNDS:
         number = progress.stage
-        stages.run(number, generator(seed, "stage", number), progress.stale)
+        stages.run(number, generator(seed, "stage", number), progress.island, progress.age)
         reason = budget.reason()
         if reason is not None:
             return pool, progress, reason
@@ -108,8 +118,22 @@ def _note(pool: Pool, progress: Progress, budget: Budget) -> None:
         return
     evaluation, rank = pool.best.evaluation, pool.best.rank
     progress.history.append((float(budget.used), evaluation.worst_margin, evaluation.score))
-    gained = rank[0] > progress.mark[0] or rank[1] > progress.mark[1] + _GAIN * abs(progress.mark[1])
-    if not np.isfinite(progress.mark[1]):
-        gained = True
-    progress.stale = 0 if gained else progress.stale + 1
-    progress.mark = rank if gained else progress.mark
+    gained = _gains(rank, progress.mark)
+    progress.stale, progress.mark = (0, rank) if gained else (progress.stale + 1, progress.mark)
+    here = pool.best_on(progress.island)
+    gained = here is not None and _gains(here.rank, progress.island_mark)
+    progress.age += 1
+    if gained and here is not None:
+        progress.island_stale, progress.island_mark = 0, here.rank
+        return
+    progress.island_stale += 1
+    if progress.island_stale >= _ISLAND_PATIENCE:
+        progress.island, progress.age, progress.island_stale = progress.island + 1, 0, 0
+        progress.island_mark = (False, -np.inf)
+
+
+def _gains(rank: tuple[bool, float], mark: tuple[bool, float]) -> bool:
+    """Is a rank better than a mark by more than the smallest gain that counts?"""
+    if not np.isfinite(mark[1]):
+        return True
+    return rank[0] > mark[0] or (rank[0] == mark[0] and rank[1] > mark[1] + _GAIN * abs(mark[1]))

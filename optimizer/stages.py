@@ -68,6 +68,7 @@ class Stages:
         self._starts = starts
         self._given = [mended(layout, layout.variables(a, b)) if layout.count else np.zeros(0) for a, b in given]
         self._coarse = layout.coarse()
+        self._island = 0
 
     def obvious(self) -> None:
         """Judge what is given and the obvious patterns, so that a run never ends with nothing."""
@@ -81,18 +82,25 @@ class Stages:
             for sign in (1.0, -1.0):
                 self.pool.add(mended(self.layout, self.layout.variables(a, sign * b)), "given")
 
-    def run(self, number: int, random: np.random.Generator, stale: int) -> None:
+    def run(self, number: int, random: np.random.Generator, island: int, age: int) -> None:
         """Run one stage.
 
         Tabu walks come first wherever conditions are linear, since they are the strongest search a second there;
-        relaxed design follows where they end far from the requires, and whenever they no longer gain. Elsewhere relaxed
+        relaxed design follows where they end far from the requires, and begins every second island. Elsewhere relaxed
         design and polish take turns.
+
+        Args:
+            number: Number of the stage.
+            random: The stage's own random stream.
+            island: Number of the population that is bred.
+            age: Rounds that it has been bred for.
         """
+        self._island = island
         tabu = self._tabu
         if number == 0 and tabu is None:
             self._relaxed(random)
-        elif tabu is not None and not self._wants_relaxed(number, stale):
-            self._walks(tabu, number, random, stale)
+        elif tabu is not None and not self._wants_relaxed(number, age):
+            self._walks(tabu, random, fresh=STARTS if age == 0 else 0)
             if self._coarse is not self.layout:
                 self._refine(random)
         elif self.problem.is_linear:
@@ -105,13 +113,13 @@ class Stages:
             self._calibrate()
             self._polish()
 
-    def _wants_relaxed(self, number: int, stale: int) -> bool:
+    def _wants_relaxed(self, number: int, age: int) -> bool:
         """Is it the turn of relaxed design in a problem that walks can search?"""
         best = self.pool.best
         far = best is None or (not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR)
         if not self.problem.is_linear:
             return number % 2 == 1
-        return (number == 1 and far) or stale in (2, 6)
+        return age == 0 and self._island % 2 == 1 and (far or bool(self.problem.improves)) or (number == 1 and far)
 
     # --- relaxed searches -------------------------------------------------------------------------------------------
 
@@ -147,16 +155,15 @@ class Stages:
         """Judge the best of many rounded variables exactly; returns the order of all by the search's score."""
         order = np.argsort(-self._scores(self.layout, z), kind="stable")
         for n in order[:_JUDGED]:
-            self.pool.add(z[n], origin)
+            self.pool.add(z[n], origin, self._island)
         return order
 
     # --- local search -----------------------------------------------------------------------------------------------
 
-    def _walks(self, tabu: TabuSearch, number: int, random: np.random.Generator, stale: int) -> None:
-        """Tabu walks from the best designs disturbed, and from fresh structured starts, more of those when stuck."""
+    def _walks(self, tabu: TabuSearch, random: np.random.Generator, fresh: int) -> None:
+        """Tabu walks from fresh structured starts, or from the island's best designs disturbed or crossed."""
         layout = self._coarse
-        known = [rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(_PARENTS)]
-        fresh = STARTS if number == 0 else STARTS // 4 if stale >= 4 else 0
+        known = [rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(_PARENTS, self._island)]
         starts = list(self._best_drawn(layout, random, fresh))
         for n in range(STARTS - fresh):
             z = known[min(int(random.exponential(_SPREAD)), len(known) - 1)]
@@ -168,7 +175,7 @@ class Stages:
             other = -other if self.problem.reverses and (other == z).mean() < 0.5 else other
             starts.append(crossed(layout, z, other, random))
         violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
-        steps = _FIRST_WALK if number == 0 else _WALK
+        steps = _FIRST_WALK if fresh else _WALK
         found = tabu.run(np.stack(starts), random, self.budget, steps, _SOFTNESS, violation)
         self._add(np.stack([self._fine(z) for z in found]), "polish")
 
@@ -177,7 +184,7 @@ class Stages:
         if self._local is None or max(self.layout.brushes) == 1:
             return
         for candidate in self.pool.distinct(_POLISHED):
-            self.pool.add(self._local.run(candidate.z, random, _LOCAL_STEPS, self.budget), "polish")
+            self.pool.add(self._local.run(candidate.z, random, _LOCAL_STEPS, self.budget), "polish", self._island)
 
     def _calibrate(self) -> None:
         """Correct the surrogates so that they are exact at the best design."""
@@ -188,7 +195,7 @@ class Stages:
     def _polish(self) -> None:
         """Moves on any problem, judged by the physics itself."""
         for candidate in self.pool.distinct(_POLISHED):
-            self.pool.add(self._polisher.run(candidate.z, _POLISH_STEPS, self.budget), "polish")
+            self.pool.add(self._polisher.run(candidate.z, _POLISH_STEPS, self.budget), "polish", self._island)
 
     def _fine(self, z: Array) -> Array:
         """Variables of the full layout for those of the coarse one."""

@@ -21,6 +21,8 @@ class StopReason(Enum):
 class Budget:
     """Counts evaluations (one pattern pair through all its poses) and watches the clock and the interrupt flag.
 
+    What costs a fraction of an evaluation (moves of a walk) is booked as that fraction.
+
     Attributes:
         evaluations: Evaluations allowed, over all resumes.
         used: Evaluations so far.

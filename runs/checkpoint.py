@@ -40,8 +40,12 @@ def take(pool: Pool, progress: Progress, evaluations: int) -> Checkpoint:
         {
             "variables": np.array(z, dtype=np.int8).reshape(len(z), pool.layout.count),
             "origins": np.array([ORIGINS.index(c.origin) for c in pool.candidates], dtype=np.int8),
-            "stage": np.array([progress.stage, progress.stale, int(progress.mark[0])], dtype=np.int64),
-            "mark": np.array([progress.mark[1]], dtype=np.float64),
+            "islands": np.array([candidate.island for candidate in pool.candidates], dtype=np.int64),
+            "stage": np.array(
+                [progress.stage, progress.stale, progress.mark[0], progress.island, progress.age,
+                 progress.island_stale, progress.island_mark[0]], dtype=np.int64,
+            ),
+            "marks": np.array([progress.mark[1], progress.island_mark[1]], dtype=np.float64),
             "rounds": np.array(progress.history, dtype=np.float64).reshape(-1, 3),
             "evaluations": np.array([evaluations], dtype=np.int64),
         }
@@ -56,15 +60,19 @@ def restore(arrays: dict[str, NDArray[Any]], problem: Problem, layout: Layout) -
     """
     pool = Pool(problem, layout)
     try:
-        variables, origins = arrays["variables"], arrays["origins"]
+        variables, origins, islands = arrays["variables"], arrays["origins"], arrays["islands"]
         if variables.shape[1:] != (layout.count,):
             message = "the archive's state does not fit its spec; start the run anew with --replace"
             raise InputError(message)
-        for z, origin in zip(variables, origins, strict=True):
-            pool.add(z.astype(np.float64), ORIGINS[int(origin)])
-        stage, stale, met = (int(value) for value in arrays["stage"])
+        for z, origin, island in zip(variables, origins, islands, strict=True):
+            pool.add(z.astype(np.float64), ORIGINS[int(origin)], int(island))
+        stage, stale, met, island, age, island_stale, island_met = (int(value) for value in arrays["stage"])
+        mark, island_mark = (float(value) for value in arrays["marks"])
         history = [(float(a), float(b), float(c)) for a, b, c in arrays["rounds"]]
-        return pool, Progress(stage, stale, (bool(met), float(arrays["mark"][0])), history)
-    except (KeyError, IndexError) as error:
+        marks = ((bool(met), mark), (bool(island_met), island_mark))
+        return pool, Progress(stage, stale, marks[0], island, age, island_stale, marks[1], history)
+    except InputError:
+        raise
+    except (KeyError, IndexError, ValueError) as error:
         message = f"the archive holds no complete state ({error}); start the run anew with --replace"
         raise InputError(message) from None

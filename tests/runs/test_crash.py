@@ -18,7 +18,7 @@ from .specs import ENVIRONMENT, SEARCHED, differences, write
 
 pytestmark = pytest.mark.skipif(os.name != "posix", reason="signals of POSIX")
 KILLS = 8
-LONGEST = 3.0
+LONGEST = 2.5
 """Seconds a run may live before it is killed: imports and the first stages fall into them."""
 
 
