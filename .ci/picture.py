@@ -16,9 +16,9 @@ from polewright.runs.report.curves import force_gap_figure
 from polewright.runs.report.patterns import Drawing, Face, _draw, legend
 from polewright.runs.spec import spec_from_json
 
-SCALE = 2.5  # of the faces
+SCALE = 4.0  # of the faces
 GAP = 6.0  # between the elements [mm]
-CURVE = (178.0, 137.0)  # size of the curve on the picture [mm]
+CURVE = (160.0, 123.4)  # size of the curve on the picture [mm]
 
 
 def placed(svg: str, x: float, y: float, width: float, height: float) -> str:

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
+from typing import final
 
 import numpy as np
 from numpy.typing import NDArray
@@ -14,8 +15,11 @@ from .plan import Response
 from .sites import Source, seats
 
 Array = NDArray[np.float64]
+Measure = Callable[[Sequence[Row]], Array]
+"""Values of pair rows [SI], shape (row,)."""
 
 
+@final
 class Case:
     """A pattern pair with exact physics at any pose.
 
@@ -23,15 +27,19 @@ class Case:
         base: The part below.
         mover: The part above.
         response: The plan's numbers for this design, float64 NumPy.
+        measure: Where pair physics comes from, if not from the nominal parts: another path, a pair with errors.
     """
 
-    def __init__(self, base: Part, mover: Part, response: Response) -> None:
+    def __init__(self, base: Part, mover: Part, response: Response, measure: Measure | None = None) -> None:
         self.base = base
         self.mover = mover
         self.response = response
+        self.measure = measure
 
     def pair(self, rows: Sequence[Row]) -> Array:
         """Exact values of pair rows at any poses [SI], shape (row,)."""
+        if self.measure is not None:
+            return self.measure(rows)
         return pair_values(self.base, self.mover, self.response.base, self.response.mover, rows)
 
     def axial_force(self, gaps: Array) -> Array:

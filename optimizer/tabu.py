@@ -48,14 +48,19 @@ class _Tables(NamedTuple):
 
 
 class _Walk(NamedTuple):
-    """State of one start: variables, values of the forms, their slopes, when each variable is free, the best so far."""
+    """State of one start.
+
+    Variables, values of the forms, their slopes, when each variable is free again; the best soft score met, which bars
+    are lifted for; the best true score met and its variables.
+    """
 
     z: jax.Array
     values: jax.Array
     slopes: jax.Array
     free: jax.Array
     best: jax.Array
-    best_z: jax.Array
+    top: jax.Array
+    top_z: jax.Array
 
 
 class TabuSearch:
@@ -102,7 +107,7 @@ class TabuSearch:
             ]
             jax.block_until_ready(walks)  # type: ignore[no-untyped-call]
             budget.spend(len(starts) * CHUNK // MOVES_PER_EVALUATION)
-        return np.concatenate([np.asarray(walk.best_z) for walk, _ in walks])
+        return np.concatenate([np.asarray(walk.top_z) for walk, _ in walks])
 
     def _begin(self, starts: Array, softness: Array, violation: Array) -> tuple[_Walk, tuple[jax.Array, ...]]:
         """State of some starts, and their prices."""
@@ -110,11 +115,16 @@ class TabuSearch:
         slopes = np.stack([self.forms.slopes(z) for z in starts])
         price = (jnp.asarray(softness), jnp.asarray(violation))
         best = jax.vmap(self._score)(jnp.asarray(values), *price)
+        top = jax.vmap(self._true_score)(jnp.asarray(values), price[1])
         free = jnp.zeros(starts.shape, dtype=jnp.int64)
         z = jnp.asarray(starts)
-        return _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, z), price
+        return _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, top, z), price
 
-    def _score(self, values: jax.Array, softness: jax.Array, violation: jax.Array) -> Any:
+    def _true_score(self, values: jax.Array, violation: jax.Array) -> Any:
+        """Score of forms (form,) with the true minimum."""
+        return self._score(values, None, violation)
+
+    def _score(self, values: jax.Array, softness: jax.Array | None, violation: jax.Array) -> Any:
         """Score of forms (form, ...), shape (...): ``scoring.score`` written out form by form, which XLA fuses."""
         forms = list(values)
         if self.forms.improves:
@@ -126,6 +136,8 @@ class TabuSearch:
         if not counting:
             return missed + jnp.minimum(reduce(jnp.minimum, equal), 0.5)
         least = reduce(jnp.minimum, counting)
+        if softness is None:
+            return least + missed
         tail = sum((_decay((c - least) / softness) for c in counting), jnp.zeros(()))
         return least - softness * _logarithm(tail) + missed
 
@@ -165,9 +177,10 @@ class TabuSearch:
             walk = flip(tables, walk, i, -2.0 * walk.z[i])
             walk = flip(tables, walk, j, jnp.where(joint, -2.0 * walk.z[j], 0.0))
             reached = self._score(walk.values, softness, violation)
-            better = reached > walk.best
-            best_z = jnp.where(better, walk.z, walk.best_z)
-            return walk._replace(free=free, best=jnp.where(better, reached, walk.best), best_z=best_z)
+            true = self._true_score(walk.values, violation)
+            top_z = jnp.where(true > walk.top, walk.z, walk.top_z)
+            best, top = jnp.maximum(reached, walk.best), jnp.maximum(true, walk.top)
+            return walk._replace(free=free, best=best, top=top, top_z=top_z)
 
         many = jax.vmap(step, in_axes=(None, 0, 0, 0, None, 0))
 

@@ -44,9 +44,7 @@ def problem_of(spec: Spec) -> Problem:
 
 def build_problem(spec: Spec, base: Part, mover: Part) -> Problem:
     """The same with parts of one's own in place of the nominal ones."""
-    requires = [
-        Require(entry.quantity, params(entry), _bound(entry, FACTORS[entry.info.unit])) for entry in spec.require
-    ]
+    requires = [Require(entry.quantity, params(entry), bound_of(entry)) for entry in spec.require]
     improves = [_improve(entry, FACTORS[entry.info.unit]) for entry in spec.improve]
     try:
         return Problem(base, mover, requires, improves)
@@ -81,6 +79,14 @@ def params(entry: SpecEntry) -> Mapping[str, Any]:
     return {_bare(keys[name]): _to_si(value, FACTORS[keys[name].unit]) for name, value in entry.settings.items()}
 
 
+def bound_of(entry: SpecRequire) -> Bound:
+    """Bound of a require in SI."""
+    factor = FACTORS[entry.info.unit]
+    value = np.array(entry.bounds, dtype=np.float64) * factor
+    within = np.array(entry.bands or (0.0,) * entry.count, dtype=np.float64) * factor
+    return Bound(entry.kind, value, within, None if entry.scale is None else entry.scale * factor)
+
+
 def _bare(key: Key) -> str:
     """Drop the unit: gap_mm becomes gap."""
     suffix = "_" + key.unit
@@ -93,12 +99,6 @@ def _to_si(value: Any, factor: float) -> Any:
     if isinstance(value, tuple | list):
         return tuple(_to_si(item, factor) for item in value)
     return value * factor
-
-
-def _bound(entry: SpecRequire, factor: float) -> Bound:
-    value = np.array(entry.bounds, dtype=np.float64) * factor
-    within = np.array(entry.bands or (0.0,) * entry.count, dtype=np.float64) * factor
-    return Bound(entry.kind, value, within, None if entry.scale is None else entry.scale * factor)
 
 
 def _improve(entry: SpecImprove, factor: float) -> Improve:
@@ -136,24 +136,41 @@ def _column(number: int, entry: SpecEntry, element: int, factor: float) -> Colum
 
 
 def _words(entry: SpecEntry, element: int) -> str:
-    """What people read: the quantity and those of its keys that were given or matter."""
-    told = []
+    """What people read: the quantity and those of its keys that were given or matter.
+
+    A value of a list is one word, so that the labels of an entry's elements differ in one word and merge into one.
+    """
+    told = [entry.quantity]
+    if entry.quantity == "stray_field":
+        told.append(f"{_word(entry.settings['distance_mm'])} mm {_SIDES[str(entry.settings['side'])]}")
     for key in CATALOGUE[entry.quantity].keys:
         value = entry.settings.get(key.name)
-        if value is None or (value == key.default and key.name not in ("of", "edge", "axis")):
+        if key.name in ("side", "distance_mm") or value is None or (value == key.default and key.name not in _ALWAYS):
             continue
         if entry.listed == key.name and isinstance(value, tuple):
             value = value[element]
-        told.append(_word(key, value))
-    return " ".join([entry.quantity, *told])
+        told.append(_phrase(entry, key, value))
+    return " ".join(told)
 
 
-def _word(key: Key, value: Any) -> str:
-    name = {"gap": "at", "between": "between", "of": "of", "side": "at", "distance": "at"}.get(_bare(key), _bare(key))
-    unit = "" if key.unit == "1" else " " + key.unit
+_ALWAYS = ("of", "edge", "axis", "field_mT")
+_SIDES = {"back": "behind", "front": "in front of", "around": "all around"}
+_PHRASES = {
+    "gap": "at {} mm gap", "offset": "at {} mm offset", "between": "between {} mm", "load": "under {} N",
+    "travel": "over {} mm", "axis": "along {}", "friction": "with friction {}", "arm": "at {} mm arm",
+    "edge": "over edge {}", "which": "in {}", "point": "at {} mm", "component": "along {}", "field": "down to {} mT",
+}  # fmt: skip
+
+
+def _phrase(entry: SpecEntry, key: Key, value: Any) -> str:
+    if key.name == "of":
+        part = "both parts" if value == "both" else f"the {value}"
+        return part if entry.quantity == "stray_field" else f"of {part}"
+    text = f"{value[0]:g} and {value[1]:g}" if key.kind == "range" else _word(value)
+    return _PHRASES[_bare(key)].format(text)
+
+
+def _word(value: Any) -> str:
     if isinstance(value, tuple):
-        text = (" and " if key.kind == "range" else ", ").join(f"{item:g}" for item in value)
-        return f"{name} {text if key.kind == 'range' else f'[{text}]'}{unit}"
-    if isinstance(value, str):
-        return f"{name} {value}"
-    return f"{name} {value:g}{unit}" + (" gap" if _bare(key) == "gap" else "")
+        return f"({','.join(_word(item) for item in value)})"
+    return value if isinstance(value, str) else f"{value:g}"

@@ -11,13 +11,12 @@ from numpy.typing import NDArray
 
 from ...models.pair import Row
 from ...models.part import Part
-from ...models.units import FACTORS
 from ...objectives.goals import relative_margins
 from ...objectives.plan import Plan
 from ...objectives.quantity import Bound, Quantity
 from ...objectives.registry import QUANTITIES
 from ..judged import merged_label
-from ..resolve import columns_of, params
+from ..resolve import bound_of, columns_of, params
 from ..spec import Require, Spec
 
 Array = NDArray[np.float64]
@@ -73,12 +72,7 @@ def asked_of(spec: Spec, base: Part, mover: Part) -> tuple[Asked, ...]:
     for entry in (*spec.require, *spec.improve):
         part_of = slice(first, first + entry.count)
         labels = tuple(column.label for column in columns[part_of])
-        factor = FACTORS[entry.info.unit]
-        bound = None
-        if isinstance(entry, Require):
-            within = np.array(entry.bands or (0.0,) * entry.count, np.float64) * factor
-            scale = None if entry.scale is None else entry.scale * factor
-            bound = Bound(entry.kind, np.array(entry.bounds, np.float64) * factor, within, scale)
+        bound = bound_of(entry) if isinstance(entry, Require) else None
         quantity: Quantity | None = None
         rows: tuple[Row, ...] = ()
         if entry.quantity not in LEAKS:

@@ -55,7 +55,8 @@ def assembly(spec: Spec, asked: tuple[Asked, ...], state: State, tell: Tell) -> 
 
     Returns:
         A record a way: ``name``, ``text`` in words, ``values`` (label, unit, value in SI: the axial force at the spec's
-        poses, then everything required), ``dangerous``.
+        poses, then everything required), ``changes`` (does it change anything?), ``likely`` (can it happen, as far as
+        the spec says?), ``dangerous``.
     """
     poses = poses_of(asked) or _own_poses(asked, state)
     rows = [Row("fz", *pose) for pose in poses]
@@ -137,14 +138,18 @@ def _record(
         if float(entry.margins(value)) < 0.0:
             missed.append(entry.label)
     pairs = [(nominal, forces), *zip(meant, values, strict=True)]
-    if all(_unchanged(before, after) for before, after in pairs):
+    changes = not all(_unchanged(before, after) for before, after in pairs)
+    if not changes:
         text, harm = "Changes nothing: it fits either way.", False
     else:
         words, harm = _forces_in_words(rows, nominal, forces)
         text = words + (f" It then misses {', '.join(missed)}." if missed else " It still meets every requirement.")
         if not way.likely:
             text += " A guide prevents this; it happens only where the guide is missing."
-    return {"name": way.name, "text": text, "values": shown, "dangerous": harm and way.likely}
+    return {
+        "name": way.name, "text": text, "values": shown, "changes": changes, "likely": way.likely,
+        "dangerous": harm and way.likely,
+    }  # fmt: skip
 
 
 def _unchanged(before: Array, after: Array) -> bool:

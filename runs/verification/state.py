@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Literal, cast, final
+from typing import Literal, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,13 +15,12 @@ from ...models.part import Part
 from ...models.peak import field_reach, peak
 from ...models.stray import Placed, Seat, field, seat_base, seat_mover
 from ...models.surfaces import Surface, around, plane
-from ...objectives.case import Case
+from ...objectives.case import Case, Measure
 from ...objectives.plan import Response
 from .asked import Asked
 
 Array = NDArray[np.float64]
 Way = tuple[float, float]
-Measure = Callable[[Sequence[Row]], Array]
 Source = Literal["base", "mover", "pair"]
 
 _WIDEN = 0.3
@@ -99,19 +98,6 @@ class State:
         return values
 
 
-@final
-class Measured(Case):
-    """A case whose pair physics comes from anywhere: another path, an interpolation, a pair with errors."""
-
-    def __init__(self, base: Part, mover: Part, a: Array, b: Array, measure: Measure, rows: Sequence[Row]) -> None:
-        super().__init__(base, mover, Response(np, measure(rows), np.zeros(0), a, b))
-        self._measure = measure
-
-    def pair(self, rows: Sequence[Row]) -> Array:
-        """Values of pair rows as measured [SI], shape (row,)."""
-        return self._measure(rows)
-
-
 def measured_value(entry: Asked, base: Part, mover: Part, a: Array, b: Array, measure: Measure) -> Array:
     """Value of a pair quantity [SI], shape (elements,), its rows measured by ``measure``."""
     if entry.quantity is None:
@@ -119,7 +105,8 @@ def measured_value(entry: Asked, base: Part, mover: Part, a: Array, b: Array, me
         raise ValueError(message)
     if entry.quantity.of_pattern:
         a, b = np.sign(a), np.sign(b)
-    return entry.quantity.exact(Measured(base, mover, a, b, measure, entry.rows))
+    response = Response(np, measure(entry.rows), np.zeros(0), a, b)
+    return entry.quantity.exact(Case(base, mover, response, measure))
 
 
 def exact_value(entry: Asked, state: State, guess: float | None = None) -> Array:
