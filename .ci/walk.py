@@ -1,6 +1,6 @@
 """Do the README's walk again: run its commands on its spec, write what they print into it, and redraw its picture.
 
-Usage: python .ci/walk.py   (needs .ci/path on PYTHONPATH, or polewright installed)
+Usage: python .ci/walk.py
 """
 
 from __future__ import annotations
@@ -55,6 +55,7 @@ def main() -> None:
     # what people see without a terminal of their own: plain, at the width of a log
     for name in ("COLUMNS", "FORCE_COLOR"):
         os.environ.pop(name, None)
+    os.environ["PYTHONPATH"] = str(ROOT / ".ci" / "path")
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         README.write_text(walk(README.read_text(encoding="utf-8"), folder), encoding="utf-8")

@@ -69,9 +69,9 @@ class GradientDesign:
         count = self.relaxed.problem.counts.size
         state = jax.vmap(lambda x: _State(x, self._adam.init(x), jnp.zeros(count)))(latent)
         for first in range(0, self.steps, CHUNK):
-            if budget.reason() is not None or budget.left < len(starts):
-                break
             last = min(first + CHUNK, self.steps)
+            if budget.reason() is not None or not budget.affords(len(starts) * (last - first)):
+                break
             state = self._advance(self.relaxed.tables, state, jnp.arange(first, last) / self.steps)
             budget.spend(len(starts) * (last - first))
         return np.asarray(self._project(state.latent))

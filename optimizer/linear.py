@@ -30,7 +30,7 @@ def alternate(forms: ConditionForms, z: Array, budget: Budget) -> Array:
     for _ in range(_SWEEPS):
         before = best
         for owner in owners:
-            if budget.reason() is not None:
+            if budget.reason() is not None or not budget.affords(1):
                 return z
             candidate = best_part(forms, z, "base" if owner == 0 else "mover")
             budget.spend(1)

@@ -49,7 +49,7 @@ class LocalSearch:
         longest = max(z.size // 12, 6)
         for step in range(steps):
             if step % _CHECK == 0:
-                if budget.reason() is not None:
+                if budget.reason() is not None or not budget.affords(min(_CHECK, steps - step)):
                     break
                 budget.spend(min(_CHECK, steps - step))
             flips = self._flips(z)

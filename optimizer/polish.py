@@ -58,6 +58,8 @@ class Polish:
             trial = trial[keeps_width(self.relaxed.layout, trial)]
             if not trial.size:
                 continue
+            if not budget.affords(len(trial)):
+                return None
             budget.spend(len(trial))
             scores = self._scores(trial)
             top = int(np.argmax(scores))

@@ -26,7 +26,7 @@ _ROUNDS = 40
 _PATIENCE_MET, _PATIENCE_MISSED = 5, 20
 """Rounds without a gain that end a run whose best design meets every require, or does not."""
 _ISLAND_PATIENCE = 3
-"""Rounds without a gain that end an island: a new population finds other basins sooner than an old one leaves its own."""
+"""Rounds without a gain that end an island: a new population finds other basins sooner than an old one leaves its."""
 _GAIN = 1e-3
 """Smallest relative gain of the score that counts."""
 
@@ -85,24 +85,24 @@ def search(
     """
     pool, progress = pool or Pool(problem, layout), progress or Progress()
     stages = Stages(problem, layout, budget, pool, starts, given)
-    if progress.stage == 0:
-        stages.obvious()
-        budget.spend(1)
-    if layout.count == 0:
-        return pool, progress, StopReason.GIVEN
-    if exhaustive.fits(problem, layout, budget):
+    if layout.count and exhaustive.fits(problem, layout, budget):
         found, complete = exhaustive.best(problem, layout, budget)
         for z in found:
             pool.add(z, "enumerated")
         _note(pool, progress, budget)
-        return pool, progress, StopReason.PROVEN if complete else budget.reason() or StopReason.EVALUATIONS
+        if pool.best is not None:
+            return pool, progress, StopReason.PROVEN if complete else budget.reason() or StopReason.EVALUATIONS
+    if progress.stage == 0:
+        stages.obvious()
+    if layout.count == 0:
+        return pool, progress, StopReason.GIVEN
     while progress.stage < _ROUNDS:
         number = progress.stage
         stages.run(number, generator(seed, "stage", number), progress.island, progress.age)
         reason = budget.reason()
+        _note(pool, progress, budget)
         if reason is not None:
             return pool, progress, reason
-        _note(pool, progress, budget)
         progress.stage += 1
         if on_stage is not None:
             on_stage(pool, progress)

@@ -8,6 +8,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
+from ..models.errors import InputError
 from ..models.patterns import checker, stripes, uniform
 from ..objectives.problem import Problem
 from .forms import ConditionForms
@@ -71,16 +72,28 @@ class Stages:
         self._island = 0
 
     def obvious(self) -> None:
-        """Judge what is given and the obvious patterns, so that a run never ends with nothing."""
-        for z in self._given:
-            self.pool.add(z, "given")
+        """Judge what is given and the obvious patterns, so that a run never ends with nothing.
+
+        Raises:
+            InputError: No pattern keeps the pole width under the symmetry and the given cells.
+        """
+        found = list(self._given)
         faces = [
             [uniform(mask), *(make(mask, width) for make in (stripes, checker) for width in (brush, 2 * brush))]
             for mask, brush in zip(self.layout.masks, self.layout.brushes, strict=True)
         ]
         for a, b in zip(*faces, strict=True):
-            for sign in (1.0, -1.0):
-                self.pool.add(mended(self.layout, self.layout.variables(a, sign * b)), "given")
+            found += [mended(self.layout, self.layout.variables(a, sign * b)) for sign in (1.0, -1.0)]
+        for z in found:
+            if self.pool.best is None or self.budget.affords(1):
+                self.budget.spend(1)
+                self.pool.add(z, "given")
+        if self.pool.best is None:
+            message = (
+                "no pattern found that keeps the pole width with this symmetry and the given cells; "
+                "lower pole_width_min_mm, drop the symmetry or give fewer cells"
+            )
+            raise InputError(message)
 
     def run(self, number: int, random: np.random.Generator, island: int, age: int) -> None:
         """Run one stage.
@@ -119,7 +132,8 @@ class Stages:
         far = best is None or (not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR)
         if not self.problem.is_linear:
             return number % 2 == 1
-        return age == 0 and self._island % 2 == 1 and (far or bool(self.problem.improves)) or (number == 1 and far)
+        begins = age == 0 and self._island % 2 == 1 and (far or bool(self.problem.improves))
+        return begins or (number == 1 and far)
 
     # --- relaxed searches -------------------------------------------------------------------------------------------
 
@@ -136,7 +150,7 @@ class Stages:
 
     def _best_drawn(self, layout: Layout, random: np.random.Generator, count: int) -> Array:
         """The best ``count`` of many structured starts, by the search's own score."""
-        many = min(_DRAWN, 20 * self.budget.left // 21) if count else 0
+        many = min(_DRAWN, self.budget.left // 2) if count else 0
         drawn = composites(layout, random, max(many, count))
         order = np.argsort(-self._scores(layout, drawn), kind="stable")
         return drawn[order[:count]]
@@ -145,7 +159,7 @@ class Stages:
         """Scores of rounded variables (m, n) of a layout, shape (m,)."""
         if not len(z):
             return np.zeros(0)
-        self.budget.spend(len(z))
+        self.budget.spend(min(len(z), self.budget.left))
         if layout is not self.layout:
             z = np.stack([self._fine(one) for one in z])
         conditions, worth = self._physics.judge_many(z)
@@ -163,7 +177,9 @@ class Stages:
     def _walks(self, tabu: TabuSearch, random: np.random.Generator, fresh: int) -> None:
         """Tabu walks from fresh structured starts, or from the island's best designs disturbed or crossed."""
         layout = self._coarse
-        known = [rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(_PARENTS, self._island)]
+        known = [
+            rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(_PARENTS, self._island)
+        ]
         starts = list(self._best_drawn(layout, random, fresh))
         for n in range(STARTS - fresh):
             z = known[min(int(random.exponential(_SPREAD)), len(known) - 1)]

@@ -44,6 +44,7 @@ class Budget:
         self.elapsed_before = elapsed_before
         self._interrupted = interrupted
         self._started = time.monotonic()
+        self._short = False
 
     @property
     def elapsed(self) -> float:
@@ -59,11 +60,16 @@ class Budget:
         """Book evaluations."""
         self.used += count
 
+    def affords(self, count: int) -> bool:
+        """Is there budget for ``count`` more evaluations? If not, the budget counts as used up from now on."""
+        self._short = self._short or self.left < count
+        return not self._short
+
     def reason(self) -> StopReason | None:
         """Why the run must end now, or None."""
         if self._interrupted():
             return StopReason.INTERRUPTED
-        if self.used >= self.evaluations:
+        if self._short or self.used >= self.evaluations:
             return StopReason.EVALUATIONS
         if self.seconds is not None and self.elapsed >= self.seconds:
             return StopReason.SECONDS

@@ -97,7 +97,7 @@ class TabuSearch:
         halves = (slice(0, STARTS // 2), slice(STARTS // 2, STARTS))
         walks = [self._begin(starts[half], softness[half], violation[half]) for half in halves]
         for first in range(0, steps, CHUNK):
-            if budget.reason() is not None or budget.left < len(starts):
+            if budget.reason() is not None or not budget.affords(len(starts) * CHUNK // MOVES_PER_EVALUATION):
                 break
             # two halves: each call returns at once, so both cores walk
             until = first + np.arange(CHUNK)[:, None, None] + random.integers(*self._tenure, size=(CHUNK, STARTS, 2))
@@ -157,8 +157,8 @@ class TabuSearch:
         ) -> _Walk:
             # moves are only compared here: single precision is twice as fast; values and slopes stay in double
             z, slopes = walk.z.astype(jnp.float32), walk.slopes.astype(jnp.float32)
-            single = -2.0 * z * slopes + 4.0 * tables.curvature.astype(jnp.float32)
-            facing = 4.0 * z[first] * z[second] * tables.coupling.astype(jnp.float32)
+            single = -2.0 * z[None] * slopes + 4.0 * tables.curvature.astype(jnp.float32)
+            facing = 4.0 * (z[first] * z[second])[None] * tables.coupling.astype(jnp.float32)
             both = single[:, first] + single[:, second] + facing
             after = walk.values.astype(jnp.float32)[:, None] + jnp.concatenate([single, both], axis=1)
             scores = self._score(after, softness.astype(jnp.float32), violation.astype(jnp.float32))

@@ -42,8 +42,16 @@ def take(pool: Pool, progress: Progress, evaluations: int) -> Checkpoint:
             "origins": np.array([ORIGINS.index(c.origin) for c in pool.candidates], dtype=np.int8),
             "islands": np.array([candidate.island for candidate in pool.candidates], dtype=np.int64),
             "stage": np.array(
-                [progress.stage, progress.stale, progress.mark[0], progress.island, progress.age,
-                 progress.island_stale, progress.island_mark[0]], dtype=np.int64,
+                [
+                    progress.stage,
+                    progress.stale,
+                    progress.mark[0],
+                    progress.island,
+                    progress.age,
+                    progress.island_stale,
+                    progress.island_mark[0],
+                ],
+                dtype=np.int64,
             ),
             "marks": np.array([progress.mark[1], progress.island_mark[1]], dtype=np.float64),
             "rounds": np.array(progress.history, dtype=np.float64).reshape(-1, 3),
@@ -59,11 +67,11 @@ def restore(arrays: dict[str, NDArray[Any]], problem: Problem, layout: Layout) -
         InputError: The arrays do not belong to this spec.
     """
     pool = Pool(problem, layout)
+    if arrays.get("variables", np.zeros((0, 0))).shape[1:] != (layout.count,):
+        message = "the archive's state does not fit its spec; start the run anew with --replace"
+        raise InputError(message)
     try:
         variables, origins, islands = arrays["variables"], arrays["origins"], arrays["islands"]
-        if variables.shape[1:] != (layout.count,):
-            message = "the archive's state does not fit its spec; start the run anew with --replace"
-            raise InputError(message)
         for z, origin, island in zip(variables, origins, islands, strict=True):
             pool.add(z.astype(np.float64), ORIGINS[int(origin)], int(island))
         stage, stale, met, island, age, island_stale, island_met = (int(value) for value in arrays["stage"])
@@ -71,8 +79,6 @@ def restore(arrays: dict[str, NDArray[Any]], problem: Problem, layout: Layout) -
         history = [(float(a), float(b), float(c)) for a, b, c in arrays["rounds"]]
         marks = ((bool(met), mark), (bool(island_met), island_mark))
         return pool, Progress(stage, stale, marks[0], island, age, island_stale, marks[1], history)
-    except InputError:
-        raise
     except (KeyError, IndexError, ValueError) as error:
         message = f"the archive holds no complete state ({error}); start the run anew with --replace"
         raise InputError(message) from None

@@ -12,7 +12,7 @@ from ..models.units import to_si
 from ..objectives.gaps import gap_grid
 from ..objectives.problem import Problem
 from .records import Curve, Design
-from .spec import Spec
+from .spec import Entry, Spec
 
 Array = NDArray[np.float64]
 
@@ -27,7 +27,8 @@ def curves_of(spec: Spec, problem: Problem, designs: Sequence[Design]) -> dict[s
     found = {"force_gap": _force_gap(spec, problem, designs)}
     asked = [e for e in (*spec.require, *spec.improve) if e.quantity in ("slide_force", "lateral_force")]
     if asked:
-        found["lateral"] = _lateral(problem, designs, to_si(float(asked[0].settings["gap_mm"]), "mm"), _travel(asked))  # type: ignore[arg-type]
+        gap = to_si(float(np.atleast_1d(asked[0].settings["gap_mm"])[0]), "mm")
+        found["lateral"] = _lateral(problem, designs, gap, *_direction(asked))
     return found
 
 
@@ -44,19 +45,27 @@ def _force_gap(spec: Spec, problem: Problem, designs: Sequence[Design]) -> Curve
     return Curve("gap", scale, "mm", np.array(forces).reshape(len(designs), scale.size), "N")
 
 
-def _lateral(problem: Problem, designs: Sequence[Design], gap: float, travel: float) -> Curve:
-    """Restoring force along x, positive back to the centre."""
+def _lateral(problem: Problem, designs: Sequence[Design], gap: float, travel: float, along: Array) -> Curve:
+    """Restoring force along a direction, positive back to the centre."""
     scale = np.linspace(0.0, travel, _OFFSETS)
-    rows = [Row("fx", gap, float(offset)) for offset in scale]
-    forces = [-problem.case(d.base, d.mover).pair(rows) for d in designs]
+    poses = [(gap, float(offset * along[0]), float(offset * along[1])) for offset in scale]
+    forces = []
+    for design in designs:
+        case = problem.case(design.base, design.mover)
+        force = [case.pair([Row(component, *pose) for pose in poses]) for component in ("fx", "fy")]
+        forces.append(-(along[0] * force[0] + along[1] * force[1]))
     return Curve("offset", scale, "mm", np.array(forces).reshape(len(designs), scale.size), "N")
 
 
-def _travel(asked: Sequence[object]) -> float:
-    """Largest offset that the entries name [m]."""
-    largest = 0.0
+def _direction(asked: Sequence[Entry]) -> tuple[float, Array]:
+    """Largest offset that the entries name [m], and its direction."""
+    offsets = []
     for entry in asked:
-        settings = entry.settings  # type: ignore[attr-defined]
-        named = settings.get("travel_mm", settings.get("offset_mm", 0.0))
-        largest = max(largest, float(np.abs(np.array(named, dtype=np.float64)).max()))
-    return to_si(largest, "mm")
+        if "travel_mm" in entry.settings:
+            axis = np.array([1.0, 0.0]) if entry.settings["axis"] == "x" else np.array([0.0, 1.0])
+            offsets.append(axis * np.asarray(entry.settings["travel_mm"], dtype=np.float64))
+        else:
+            offsets += list(np.asarray(entry.settings["offset_mm"], dtype=np.float64).reshape(-1, 2))
+    largest = max(offsets, key=lambda offset: float(np.hypot(*offset)))
+    length = float(np.hypot(*largest))
+    return to_si(length, "mm"), largest / length
