@@ -39,7 +39,9 @@ def picture(run: Run) -> str:
     faces = (Face("base", run.base, best.base), Face("mover", run.mover, best.mover))
     left, right = (_draw(face, SCALE) for face in faces)
     # on a screen no scale is true, and this one says what the scale bar says
-    left, right = (Drawing(re.sub(r"<text[^>]*>[^<]*not true scale</text>", "", d.svg), *size(d)) for d in (left, right))
+    left, right = (
+        Drawing(re.sub(r"<text[^>]*>[^<]*not true scale</text>", "", d.svg), *size(d)) for d in (left, right)
+    )
     band = ((run.verification or {}).get("scatter") or {}).get("force_band")
     marks = force_marks(spec_from_json(run.spec_json, run.spec_toml))
     curve = force_gap_figure(run.curves["force_gap"], 0, marks, band)

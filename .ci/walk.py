@@ -28,12 +28,15 @@ def said(arguments: str, folder: Path) -> str:
     return "\n".join(line.rstrip() for line in done.stdout.splitlines())
 
 
-def abridged(text: str) -> str:
-    """Leave out what ``verify`` says again after ``design`` has said it; dots stand for it."""
-    lines = text.splitlines()
-    first = next(n for n, line in enumerate(lines) if line.startswith("Second path"))
-    last = next(n for n, line in enumerate(lines) if line.startswith("warning:"))
-    return "\n".join(["...", *lines[first:last], "...", lines[-1]])
+def abridged(text: str, seen: set[str]) -> str:
+    """Return what an earlier command has not said already; dots stand for the rest."""
+    lines: list[str] = []
+    for line in text.splitlines():
+        if line not in seen:
+            lines.append(line)
+        elif lines[-1:] != ["..."]:
+            lines.append("...")
+    return "\n".join(lines)
 
 
 def walk(readme: str, folder: Path) -> str:
@@ -43,9 +46,13 @@ def walk(readme: str, folder: Path) -> str:
         raise SystemExit("README.md must hold a toml block")
     (folder / "latch.toml").write_text(spec[1], encoding="utf-8")
 
+    seen: set[str] = set()
+
     def again(block: re.Match[str]) -> str:
         text = said(block[1], folder)
-        return f"```console\n$ polewright {block[1]}\n{abridged(text) if block[1].startswith('verify') else text}\n```"
+        shown = abridged(text, seen)
+        seen.update(text.splitlines())
+        return f"```console\n$ polewright {block[1]}\n{shown}\n```"
 
     return BLOCK.sub(again, readme)
 

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import os
+from collections.abc import Mapping, Sequence
+from typing import Any
 
 from rich import box
 from rich.console import Console
@@ -12,10 +14,11 @@ from rich.text import Text
 from .judged import Judged, bound_text, finite, judge, numbers, percent, tightest_first
 from .records import Design, Run
 from .result import Status, status_of
+from .verification.words import PREVENT, accuracy, elsewhere, harmless, second_sentences, verification_of, wrong_ways
 
 _HEADLINES: dict[Status, tuple[str, str]] = {
     "met": ("every requirement is met", "bold green"),
-    "missed": ("the best design misses a requirement", "bold yellow"),
+    "missed": ("a requirement is missed", "bold yellow"),
     "impossible": ("proven impossible", "bold red"),
     "interrupted": ("interrupted; the best so far is saved", "bold yellow"),
     "error": ("failed", "bold red"),
@@ -45,20 +48,29 @@ def print_summary(run: Run, console: Console, design: Design | None = None, stat
         design: The design shown in full, the best one when None.
         status: How the command ended, where it differs from ``status_of(run)``.
     """
-    headline, style = _HEADLINES[status if status is not None else status_of(run)]
+    shown = design if design is not None else run.designs[0] if run.designs else None
+    headline, style = _HEADLINES[status if status is not None else _status(run, shown)]
     console.print(Text(run.title or "untitled", style="bold"))
     console.print(Text(headline[0].upper() + headline[1:] + ".", style=style))
     console.print(Text(f"Stopped: {run.stop_reason} ({run.evaluations} evaluations, seed {run.seed})."))
-    shown = design if design is not None else run.designs[0] if run.designs else None
     if shown is not None:
         console.print(_requirements(run, shown, plain=not console.is_terminal))
     if len(run.designs) > 1:
         console.print(_designs(run, plain=not console.is_terminal))
-    if run.verification is not None:
-        _print_verification(run, console)
+    if shown is not None:
+        _print_verification(run, shown, console)
     for warning in run.warnings:
         console.print(Text(f"warning: {warning}", style="yellow" if console.is_terminal else ""))
-    console.print(Text("IDEAL: computed for sharp pole edges and full magnetizing depth."))
+    if not any(warning.startswith("IDEAL") for warning in run.warnings):
+        console.print(Text("IDEAL: computed for sharp pole edges and full magnetizing depth."))
+
+
+def _status(run: Run, shown: Design | None) -> Status:
+    """How the run ended, for the design that is shown."""
+    ended = status_of(run)
+    if ended == "interrupted" or shown is None:
+        return ended
+    return "met" if shown.feasible else "missed"
 
 
 def _table(title: str, plain: bool) -> Table:
@@ -110,20 +122,42 @@ def _designs(run: Run, plain: bool) -> Table:
     return table
 
 
-def _print_verification(run: Run, console: Console) -> None:
-    found = run.verification or {}
+def _print_verification(run: Run, design: Design, console: Console) -> None:
+    found = verification_of(run, design)
+    if found is None:
+        if run.verification is not None:
+            console.print(Text(elsewhere(run, design)))
+        return
     second = found.get("second_path")
     if second:
         verdict = "agrees" if second["ok"] else "DISAGREES"
         size, limit = second["largest"], second["tolerance"]
         console.print(Text(f"Second path: {verdict} (largest relative difference {size:.1e}, allowed {limit:.0e})."))
+        for sentence in second_sentences(second):
+            console.print(Text(f"Second path: {sentence}"))
     scatter = found.get("scatter")
     if scatter:
         share = 100.0 * scatter["share_all"]
         console.print(Text(f"Scatter: {share:.1f} % of {scatter['samples']} sampled pairs meet every requirement."))
-    for wrong in found.get("assembly", []):
-        if wrong["dangerous"]:
-            console.print(Text(f"wrong assembly, {wrong['name']}: {wrong['text']}"))
+        for sentence in (*_costly(scatter["requirements"]), *accuracy(scatter["requirements"])):
+            console.print(Text(f"Scatter: {sentence}"))
+    ways = wrong_ways(found)
+    dangers = [way for way in ways if way.dangerous]
+    if dangers:
+        console.print(Text(f"Wrong assembly. {PREVENT}"))
+        for way in dangers:
+            console.print(Text(f"- {way.name}: {way.text}"))
+    elif ways:
+        console.print(Text(f"Wrong assembly. {harmless(ways)}"))
+
+
+def _costly(rows: Sequence[Mapping[str, Any]]) -> list[str]:
+    """What costs the requirements that not every sampled pair meets."""
+    return [
+        f"{row['label']} is met by {100.0 * row['share']:.1f} %; costliest tolerance: {row['costliest']}."
+        for row in rows
+        if row["share"] < 1.0
+    ]
 
 
 def _ascii(text: str) -> str:

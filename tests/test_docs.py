@@ -12,13 +12,16 @@ from __future__ import annotations
 import ast
 import hashlib
 import re
+import runpy
 import shlex
 from pathlib import Path
+from xml.etree import ElementTree
 
 import click
 import pytest
 from click.testing import CliRunner
 from polewright.objectives.catalogue import CATALOGUE, Key
+from polewright.runs.archive import open_run
 from polewright.runs.cli import COMMANDS, group, run
 from polewright.runs.report.cautions import CAUTIONS, DEFER
 from polewright.runs.result import EXIT_CODES
@@ -71,14 +74,25 @@ def between(text: str, name: str) -> str:
     return found[1]
 
 
+def shown(value: str | float | tuple[float, ...]) -> str:
+    """A default as a spec would give it."""
+    if isinstance(value, tuple):
+        return f"[{', '.join(shown(item) for item in value)}]"
+    return f'"{value}"' if isinstance(value, str) else f"{value:g}"
+
+
+def cell(text: str) -> str:
+    """Text for a cell of a table, in which a bar would end the cell."""
+    return text.replace("|", "\\|")
+
+
 def key_text(key: Key) -> str:
     """One key as the README shows it: a list marked, what it may be, what it is when not given."""
     text = f"`{key.name}`"
     notes = ["list"] if key.kind in ("numbers", "pairs", "points") else []
     notes += [" or ".join(f'"{choice}"' for choice in key.choices)] if key.choices else []
     if not key.required and key.default is not None:
-        default = list(key.default) if isinstance(key.default, tuple) else key.default
-        notes.append(f"default {default:g}" if isinstance(default, float) else f"default {default}")
+        notes.append(f"default {shown(key.default)}")
     elif not key.required:
         notes.append('of = "pair" alone' if key.name == "gap_mm" else "optional")
     return f"{text} ({'; '.join(notes)})" if notes else text
@@ -87,7 +101,7 @@ def key_text(key: Key) -> str:
 def catalogue_table() -> str:
     """The README's table of quantities."""
     rows = [
-        f"| `{name}` | {info.unit} | {info.meaning} | {', '.join(key_text(key) for key in info.keys)} |"
+        f"| `{name}` | {info.unit} | {cell(info.meaning)} | {', '.join(key_text(key) for key in info.keys)} |"
         for name, info in CATALOGUE.items()
     ]
     return "\n".join(["| quantity | unit | meaning and sign | keys |", "|---|---|---|---|", *rows])
@@ -104,7 +118,7 @@ def rooms_table(folder: str) -> str:
     for path in sorted((ROOT / folder).rglob("*.py")):
         said = ast.get_docstring(ast.parse(path.read_text(encoding="utf-8"))) or ""
         line = " ".join(said.split("\n\n")[0].split()).replace("``", "`")
-        rows.append(f"| `{path.relative_to(ROOT).as_posix()}` | {line} |")
+        rows.append(f"| `{path.relative_to(ROOT).as_posix()}` | {cell(line)} |")
     return "\n".join(["| room | what it is |", "|---|---|", *rows])
 
 
@@ -168,6 +182,9 @@ def test_the_walk_and_the_snippets_run(tmp_path: Path, monkeypatch: pytest.Monke
     printed = capsys.readouterr().out
     assert "d1 True" in printed
     assert "(2, 2)" in printed
+    if PICTURE.exists():
+        drawn = runpy.run_path(str(PICTURE.with_name("picture.py")))["picture"](open_run(Path("latch.h5")))
+        assert ElementTree.fromstring(drawn).tag.endswith("svg")
 
 
 def test_the_commands_are_all_told_and_exist() -> None:

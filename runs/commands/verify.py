@@ -16,14 +16,14 @@ import click
 def command(run: Path, design_id: str | None, as_json: bool) -> int:
     """Check a design of RUN by a second physics path, tolerances and wrong assembly, and store the result in RUN."""
     from ..judged import find_design
+    from ..progress import steps
     from ..result import EXIT_CODES, result_json
     from ..summary import print_summary, stderr_console
     from ..verify import verified_status, verify
-    from ..waiting import bar
 
     started = time.perf_counter()
     console = stderr_console()
-    with bar(console) as watch:
+    with steps(console, quiet=as_json) as watch:
         found = verify(run, design_id, watch)
     status = verified_status(found)
     if as_json:
@@ -31,7 +31,5 @@ def command(run: Path, design_id: str | None, as_json: bool) -> int:
         click.echo(json.dumps(result, ensure_ascii=False, allow_nan=False, indent=2))
     else:
         print_summary(found, console, find_design(found, design_id), status)
-        for line in (found.verification or {})["second_path"]["failed"]:
-            console.print(f"second path DISAGREES: {line}", markup=False, highlight=False)
         console.print(f"Verification stored in {run}", markup=False, highlight=False)
     return EXIT_CODES[status]

@@ -7,10 +7,12 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
+from ...models.pair import Row
 from ...models.part import Part
 from ...models.patterns import checker, stripes, uniform
-from ...models.units import to_si
+from ...models.units import from_si, to_si
 from ...objectives.problem import Evaluation, Problem
+from ..judged import number
 from ..records import Design, Run
 from ..resolve import problem_of
 from ..spec import Entry, Improve, PartSpec, Require, Spec, spec_from_json
@@ -26,10 +28,12 @@ _FORCES = {"axial_force": 1.0, "holding_force": -1.0}
 def collect_extras(run: Run, design: Design) -> ReportExtras:
     """Return what the report on one design of ``run`` shows beside the run itself."""
     spec = spec_from_json(run.spec_json)
+    problem = problem_of(spec)
     return ReportExtras(
-        baselines=() if spec.is_given else baselines(spec, problem_of(spec), design),
+        baselines=() if spec.is_given else baselines(spec, problem, design),
         marks=force_marks(spec),
         maps=stray_maps(spec, run, design),
+        balances=_balances(run, problem, design),
         needs_guide=any(entry.quantity == "stand_off" for entry in _entries(spec)),
         rotation=spec.conditions.rotation,
         lateral=spec.conditions.lateral,
@@ -62,6 +66,28 @@ def force_marks(spec: Spec) -> tuple[ForceMark, ...]:
         elif isinstance(entry, Improve) and entry.targets is not None:
             marks += [ForceMark(gap, "toward", sign * to) for gap, to in zip(gaps, entry.targets, strict=True)]
     return tuple(marks)
+
+
+def _balances(run: Run, problem: Problem, design: Design) -> tuple[str, ...]:
+    """What the guide of each stand-off of a design must take, a sentence a gap."""
+    gaps = {
+        float(value)
+        for column, value in zip(run.columns, design.values, strict=True)
+        if column.name == "stand_off" and not math.isnan(value)
+    }
+    found = []
+    for gap in sorted(gaps):
+        rows = [Row(component, gap) for component in ("kzz", "kxx", "kyy", "kxy", "mx", "my")]
+        kzz, kxx, kyy, kxy, mx, my = problem.case(design.base, design.mover).pair(rows).tolist()
+        lateral = -(kxx + kyy) / 2.0 - math.hypot((kxx - kyy) / 2.0, kxy)
+        # a moment that symmetry cancels is left as rounding
+        tilt = round(from_si(math.hypot(mx, my), "N mm"), 6)
+        found.append(
+            f"At the stand-off of {number(from_si(gap, 'mm'))} mm the axial stiffness is "
+            f"{number(from_si(-kzz, 'N/mm'))} N/mm, the lateral stiffness {number(from_si(lateral, 'N/mm'))} N/mm "
+            f"(negative pushes off the centre), the tilt moment {number(tilt)} N mm."
+        )
+    return tuple(found)
 
 
 def _entries(spec: Spec) -> tuple[Entry, ...]:

@@ -83,6 +83,7 @@ class ReportExtras:
         baselines: What obvious patterns would reach.
         marks: Bounds on the force-gap curve.
         maps: Stray-field maps.
+        balances: Sentences on what the guide must take where the spec asks for a stand-off.
         needs_guide: Does the spec ask for a stand-off, so that "stable only on a guide" must be said?
         rotation: "locked" or "free": is the mover held at its angle?
         lateral: "guided" or "free": is it held sideways?
@@ -92,6 +93,7 @@ class ReportExtras:
     baselines: tuple[Baseline, ...] = ()
     marks: tuple[ForceMark, ...] = ()
     maps: tuple[FieldMap, ...] = ()
+    balances: tuple[str, ...] = ()
     needs_guide: bool = False
     rotation: Literal["locked", "free"] = "locked"
     lateral: Literal["guided", "free"] = "guided"

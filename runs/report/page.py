@@ -3,11 +3,22 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Sequence
 from html import escape
 
 from ... import __version__
 from ..judged import find_design, judge, number, percent, tightest_first
 from ..records import Design, Run
+from ..verification.words import (
+    PREVENT,
+    Record,
+    accuracy,
+    elsewhere,
+    harmless,
+    second_sentences,
+    verification_of,
+    wrong_ways,
+)
 from . import cautions
 from .curves import force_gap_figure
 from .extras import ReportExtras
@@ -15,6 +26,11 @@ from .faces import faces_section
 from .fieldmap import field_figure
 from .style import CSS
 from .tables import assembly_list, designs_table, requirements_table, scatter_table, second_path_table
+
+_ORIGINS = {
+    "gradient": "by gradient search", "linear": "by linear programs", "polish": "by local search",
+    "search": "by discrete search", "given": "among given and obvious patterns", "enumerated": "by enumeration",
+}  # fmt: skip
 
 
 def render(run: Run, extras: ReportExtras, design_id: str | None = None) -> str:
@@ -64,18 +80,22 @@ def _head(run: Run, design: Design, extras: ReportExtras) -> str:
         badges.append('<span class="badge">stable only on a guide</span>')
     if not run.complete:
         badges.append('<span class="badge missed">interrupted run</span>')
-    lead = f"Design {escape(design.id)} of {len(run.designs)}, found by {escape(design.origin)}"
+    found = _ORIGINS.get(design.origin, design.origin)
+    lead = f"Design {escape(design.id)} of {len(run.designs)}, found {escape(found)}"
     if tightest and tightest[0].kind != "improve":
         lead += f"; tightest margin {percent(tightest[0].margin)}: {escape(tightest[0].label)}"
     out = [
         f"<header>\n<h1>{escape(run.title or 'Untitled')}</h1>\n"
         f'<p class="lead">{lead}.</p>\n<div class="verdict">{"".join(badges)}</div>'
     ]
-    dangers = [way for way in (run.verification or {}).get("assembly", []) if way["dangerous"]]
+    dangers = [way for way in wrong_ways(verification_of(run, design) or {}) if way.dangerous]
     if dangers:
-        out.append(f'<div class="note danger"><strong>Wrong assembly.</strong>{assembly_list(dangers)}</div>')
-    if run.warnings:
-        lines = "".join(f"<li>{escape(warning)}</li>" for warning in run.warnings)
+        listed = assembly_list(dangers, values=False)
+        out.append(f'<div class="note danger"><strong>Wrong assembly.</strong> {PREVENT}{listed}</div>')
+    # that the numbers are ideal is said in full below the table of requirements
+    warnings = [warning for warning in run.warnings if not warning.startswith("IDEAL")]
+    if warnings:
+        lines = "".join(f"<li>{escape(warning)}</li>" for warning in warnings)
         out.append(f'<div class="note"><strong>To know.</strong><ul>{lines}</ul></div>')
     return "\n".join(out) + "\n</header>"
 
@@ -85,11 +105,14 @@ def _results(run: Run, design: Design, extras: ReportExtras) -> str:
     heading, text = cautions.IDEAL.split(": ", 1)
     out.append(f'<p class="note"><strong>{heading}.</strong> {escape(text[0].upper() + text[1:])}</p>')
     if extras.needs_guide:
-        out.append(f'<p class="note">{escape(cautions.GUIDE)}</p>')
+        out.append(f'<p class="note">{escape(" ".join([cautions.GUIDE, *extras.balances]))}</p>')
     held = {"locked": "The mover is held at its angle", "free": "The mover may turn"}[extras.rotation]
     sideways = {"guided": "and guided sideways", "free": "and free to slide sideways"}[extras.lateral]
     out.append(f'<p class="small">{held} {sideways}. Margins are relative to the bound; the tightest stands first. '
                "Positive axial force pushes the parts apart; gaps lie between the coated faces.")  # fmt: skip
+    note = elsewhere(run, design)
+    if note:
+        out.append(f" {escape(note)}.")
     if run.verification is None:
         out.append(" Not verified yet: <code>polewright verify</code> adds a second physics path and tolerances.")
     return "".join(out) + "</p>\n</section>"
@@ -100,9 +123,7 @@ def _curve(run: Run, design: Design, extras: ReportExtras) -> str:
     if curve is None:
         return ""
     position = [other.id for other in run.designs].index(design.id)
-    scatter = (run.verification or {}).get("scatter") or {}
-    # the band was sampled for the design that was verified, the best one
-    band = scatter.get("force_band") if position == 0 else None
+    band = ((verification_of(run, design) or {}).get("scatter") or {}).get("force_band")
     figure = force_gap_figure(curve, position, extras.marks, band)
     return (
         "<section>\n<h2>Force over the gap</h2>\n"
@@ -129,42 +150,61 @@ def _maps(extras: ReportExtras) -> str:
 
 
 def _checks(run: Run, design: Design) -> str:
-    found = run.verification
+    found = verification_of(run, design)
     if found is None:
-        return ""
-    out = ["<section>\n<h2>Checks</h2>"]
-    if design.id != run.designs[0].id:
-        out.append(f"<p>Verified was the best design, {escape(run.designs[0].id)}.</p>")
+        note = elsewhere(run, design)
+        return f"<section>\n<h2>Checks</h2>\n<p>{escape(note)}</p>\n</section>" if note else ""
+    out = [f"<section>\n<h2>Checks of design {escape(design.id)}</h2>"]
     second = found.get("second_path")
     if second:
-        word = "agrees" if second["ok"] else "DISAGREES"
-        largest = "unknown" if second["largest"] is None else f"{second['largest']:.1e}"
-        out.append(
-            f"<h3>Second physics path: {word}</h3>\n"
-            '<p class="intro">Another formula and other code give the same numbers: '
-            f"largest relative difference {largest}, allowed {second['tolerance']:.0e}.</p>"
-        )
-        out.append(second_path_table(second))
+        out.append(_second_path(second))
     scatter = found.get("scatter")
     if scatter:
-        out.append(
-            f'<h3>Tolerances</h3>\n<p class="intro">{100.0 * scatter["share_all"]:.1f} % of {scatter["samples"]} '
-            f"sampled pairs (seed {scatter['seed']}) meet every requirement.</p>"
-        )
-        out.append(scatter_table(scatter["requirements"]))
-        if scatter.get("imbalance_floor"):
-            out.append(_floor(scatter["imbalance_floor"]))
-    if found.get("assembly"):
-        out.append("<h3>Wrong assembly</h3>\n" + assembly_list(found["assembly"]))
+        out.append(_scatter(scatter))
+    ways = wrong_ways(found)
+    if ways:
+        lead = PREVENT if any(way.dangerous for way in ways) else harmless(ways)
+        out.append(f'<h3>Wrong assembly</h3>\n<p class="intro">{lead}</p>\n{assembly_list(ways, values=True)}')
     return "\n".join(out) + "\n</section>"
 
 
-def _floor(floor: dict[str, object]) -> str:
-    words = ", ".join(
-        f"{escape(str(name)).replace('_', ' ')} {number(value) if isinstance(value, float) else escape(str(value))}"
-        for name, value in floor.items()
+def _second_path(second: Record) -> str:
+    word = "agrees" if second["ok"] else "DISAGREES"
+    largest = "unknown" if second["largest"] is None else f"{second['largest']:.1e}"
+    says = "gives the same numbers" if second["ok"] else "does not give the same numbers"
+    return (
+        f"<h3>Second physics path: {word}</h3>\n"
+        f'<p class="intro">Another formula in other code {says}: largest relative difference {largest}, allowed '
+        f"{second['tolerance']:.0e}.</p>\n" + _sentences(second_sentences(second)) + second_path_table(second)
     )
-    return f"<p>Imbalance between N and S sets a floor under every claim of low leakage: {words}.</p>"
+
+
+def _scatter(scatter: Record) -> str:
+    out = [
+        f'<h3>Tolerances</h3>\n<p class="intro">{100.0 * scatter["share_all"]:.1f} % of {scatter["samples"]} sampled '
+        f"pairs (seed {scatter['seed']}) meet every requirement.</p>",
+        scatter_table(scatter["requirements"]),
+        _sentences(accuracy(scatter["requirements"]), small=True),
+        _sentences([f"{note[:1].upper()}{note[1:]}." for note in scatter.get("notes", [])], small=True),
+    ]
+    if scatter.get("imbalance_floor"):
+        out.append(_floor(scatter["imbalance_floor"]))
+    return "\n".join(line for line in out if line)
+
+
+def _sentences(sentences: Sequence[str], *, small: bool = False) -> str:
+    kind = ' class="small"' if small else ""
+    return f"<p{kind}>{escape(' '.join(sentences))}</p>\n" if sentences else ""
+
+
+def _floor(floor: Record) -> str:
+    """The record's keys are "label [unit]"."""
+    words = []
+    for name, value in floor.items():
+        label, _, unit = str(name).rpartition(" [")
+        size = number(value) if isinstance(value, float) else str(value)
+        words.append(escape(f"{label}: {size} {unit.rstrip(']')}" if label else f"{name}: {size}"))
+    return f"<p>Imbalance between N and S sets a floor under every claim of low leakage. {'; '.join(words)}.</p>"
 
 
 def _others(run: Run, design: Design) -> str:

@@ -31,7 +31,7 @@ PAGE_WIDTH = 180.0
 PAGE_HEIGHT = 235.0
 _LEFT, _RIGHT, _TOP, _BOTTOM = 9.0, 7.0, 8.0, 20.0
 _NARROWEST = 84.0  # room for the scale bar and its words
-_READABLE = 1.3
+_READABLE = 1.8  # mm, height of the letter on the smallest pole
 
 
 @dataclass(frozen=True, eq=False)

@@ -25,7 +25,8 @@ th{text-align:left;font-weight:600;border-bottom:.3mm solid #1a1a1a;padding:1mm 
 th.group{text-align:center;border-bottom:.2mm solid #999;font-weight:400}
 td{padding:.9mm 1.6mm;border-top:.15mm solid #ccc;vertical-align:top}
 table.requirements td{border-top-color:transparent}
-table.requirements tr.first td{border-top-color:#bbb}
+table.requirements tr.first td{border-top-color:#bbb;padding-bottom:0}
+table.requirements td.small{padding-left:4mm;white-space:nowrap}
 td.number,th.number{text-align:right;white-space:nowrap;font-variant-numeric:tabular-nums}
 tr{break-inside:avoid}
 .yes{color:#1d4a52;font-weight:600;white-space:nowrap}

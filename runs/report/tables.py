@@ -7,8 +7,9 @@ from html import escape
 from typing import Any
 
 from ...models.units import from_si
-from ..judged import Judged, bound_text, finite, judge, number, numbers, percent, tightest_first
+from ..judged import Judged, bound_text, finite, judge, merged_label, number, numbers, percent, tightest_first
 from ..records import Column, Design, Run
+from ..verification.words import WrongWay, verification_of
 from .extras import Baseline
 
 _RIGHT = ' class="number"'
@@ -20,8 +21,9 @@ def requirements_table(run: Run, design: Design, baselines: Sequence[Baseline]) 
     entries = judge(run, design)
     # rows of the scatter stand in spec order, as the requires do
     requires = [entry for entry in entries if entry.kind != "improve"]
-    scatter = {entry.columns: row for entry, row in zip(requires, _scatter_rows(run), strict=False)}
-    rows = _group_head(run, baselines)
+    sampled = ((verification_of(run, design) or {}).get("scatter") or {}).get("requirements", [])
+    scatter = {entry.columns: row for entry, row in zip(requires, sampled, strict=False)}
+    rows = _group_head(bool(scatter), baselines)
     for entry in tightest_first(entries):
         rows += _entry_rows(run, entry, scatter.get(entry.columns), bool(scatter), baselines)
     return f'<div class="wide"><table class="requirements">{"".join(rows)}</table></div>'
@@ -55,7 +57,7 @@ def second_path_table(second: Mapping[str, Any]) -> str:
         rows.append(
             f'<tr><td>{escape(str(check["what"]))}</td><td class="number">{gap}</td>'
             f'<td class="number">{kernel:.8g}</td><td class="number">{other:.8g}</td>'
-            f'<td class="number">{difference:.1e}</td><td>{_unit(unit)}</td></tr>'
+            f'<td class="number">{_small(difference)}</td><td>{_unit(unit)}</td></tr>'
         )
     return f'<div class="wide"><table>{"".join(rows)}</table></div>'
 
@@ -75,25 +77,41 @@ def scatter_table(rows: Sequence[Mapping[str, Any]]) -> str:
     return f'<div class="wide"><table>{"".join(out)}</table></div>'
 
 
-def assembly_list(wrong: Sequence[Mapping[str, Any]]) -> str:
-    """Return the wrong ways to assemble the pair and what they do."""
+def assembly_list(ways: Sequence[WrongWay], *, values: bool) -> str:
+    """Return wrong ways to assemble the pair and what they do, with or without their numbers."""
     out = []
-    for way in wrong:
-        values = ", ".join(
-            f"{escape(str(row['label']))}: {number(_shown(row['value'], str(row['unit'])))} {_unit(str(row['unit']))}"
-            for row in way["values"]
-        )
-        kind = "danger" if way["dangerous"] else "plain"
-        word = "<strong>Dangerous.</strong> " if way["dangerous"] else ""
-        out.append(
-            f'<li class="{kind}"><strong>{escape(str(way["name"]))}</strong>: {word}{escape(str(way["text"]))}'
-            f'<br><span class="small">{values}</span></li>'
-        )
+    for way in ways:
+        kind = "danger" if way.dangerous else "plain"
+        item = f'<li class="{kind}"><strong>{escape(way.name)}</strong>: {escape(way.text)}'
+        if values and way.changes:
+            item += f'<br><span class="small">{"; ".join(_merged(way.values))}</span>'
+        out.append(item + "</li>")
     return f'<ul class="assembly">{"".join(out)}</ul>'
 
 
-def _group_head(run: Run, baselines: Sequence[Baseline]) -> list[str]:
-    scatter = bool(_scatter_rows(run))
+def _merged(values: Sequence[Mapping[str, Any]]) -> list[str]:
+    """Rows of label, unit and value as one piece of text for neighbours whose labels differ in one word."""
+    groups: list[list[Mapping[str, Any]]] = []
+    for row in values:
+        if groups and _alike(groups[-1][-1], row):
+            groups[-1].append(row)
+        else:
+            groups.append([row])
+    found = []
+    for rows in groups:
+        unit = str(rows[0]["unit"])
+        shown = numbers(tuple(_shown(row["value"], unit) for row in rows))
+        found.append(f"{escape(merged_label([str(row['label']) for row in rows]))}: {shown} {_unit(unit)}".rstrip())
+    return found
+
+
+def _alike(one: Mapping[str, Any], other: Mapping[str, Any]) -> bool:
+    words, others = str(one["label"]).split(" "), str(other["label"]).split(" ")
+    differing = sum(word != word_ for word, word_ in zip(words, others, strict=False))
+    return one["unit"] == other["unit"] and len(words) == len(others) and differing == 1
+
+
+def _group_head(scatter: bool, baselines: Sequence[Baseline]) -> list[str]:
     names = "".join(f"<th{_RIGHT}>{escape(baseline.name)}</th>" for baseline in baselines)
     groups = '<th colspan="5"></th>'
     columns = "<th>quantity</th>"
@@ -110,12 +128,15 @@ def _group_head(run: Run, baselines: Sequence[Baseline]) -> list[str]:
 def _entry_rows(
     run: Run, entry: Judged, scatter: Mapping[str, Any] | None, has_scatter: bool, baselines: Sequence[Baseline]
 ) -> list[str]:
-    rows = []
+    """Return the label of an entry across the table, then one line an element."""
     count = len(entry.columns)
+    width = 5 + 3 * has_scatter + len(baselines)
+    rows = [f'<tr class="first"><td colspan="{width}">{escape(entry.label)}</td></tr>']
+    names = _element_names([run.columns[index].label for index in entry.columns])
     for element, index in enumerate(entry.columns):
         column = run.columns[index]
         cells = [
-            f"<td>{escape(column.label)}</td>",
+            f'<td class="small">{escape(names[element])}</td>',
             f'<td class="number">{_element_bound(entry, element)}</td>',
             f'<td class="number"><strong>{number(entry.values[element])}</strong> {_unit(entry.unit)}</td>',
         ]
@@ -124,9 +145,18 @@ def _entry_rows(
         if has_scatter:
             cells += _scatter_cells(entry, scatter, element, count)
         cells += [_baseline_cell(baseline, column, index) for baseline in baselines]
-        first = ' class="first"' if element == 0 else ""
-        rows.append(f"<tr{first}>{''.join(cells)}</tr>")
+        rows.append(f"<tr>{''.join(cells)}</tr>")
     return rows
+
+
+def _element_names(labels: list[str]) -> list[str]:
+    """What tells an element from the others of its entry: the words of its label from the first to the last of them."""
+    words = [label.split(" ") for label in labels]
+    if len(labels) == 1 or len({len(parts) for parts in words}) != 1:
+        return [""] if len(labels) == 1 else labels
+    differing = [n for n, parts in enumerate(zip(*words, strict=True)) if len(set(parts)) > 1]
+    # with the word after them, their unit
+    return [" ".join(parts[differing[0] : differing[-1] + 2]) if differing else "" for parts in words]
 
 
 def _element_bound(entry: Judged, element: int) -> str:
@@ -176,9 +206,8 @@ def _meets(column: Column, value: float) -> bool | None:
     return abs(value - column.bound) <= (column.within or 0.0)
 
 
-def _scatter_rows(run: Run) -> Sequence[Mapping[str, Any]]:
-    rows: Sequence[Mapping[str, Any]] = ((run.verification or {}).get("scatter") or {}).get("requirements", [])
-    return rows
+def _small(difference: float) -> str:
+    return "0" if difference == 0.0 else f"{difference:.1e}"
 
 
 def _shown(value: float | None, unit: str) -> float:

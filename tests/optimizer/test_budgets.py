@@ -3,13 +3,10 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Iterator
 
-import jax
 import numpy as np
 import pytest
 from polewright.objectives.problem import Problem
-from polewright.optimizer import gradient, tabu
 from polewright.optimizer.layout import layout
 from polewright.optimizer.pool import Pool
 from polewright.optimizer.portfolio import search
@@ -20,15 +17,6 @@ from ..models.parts import plate
 from .problems import Array, both_free, free, given, near_far, require, signs
 
 STARTS = 4
-BATCH = max(tabu.STARTS * tabu.CHUNK, STARTS * gradient.CHUNK)
-"""Evaluations between two looks at the budget: all walks of a tabu chunk, or all starts of a gradient chunk."""
-
-
-@pytest.fixture(autouse=True)
-def ranks_allowed() -> Iterator[None]:
-    """As in the tests of the walk itself."""
-    with jax.numpy_rank_promotion("allow"):
-        yield
 
 
 def test_a_stream_depends_on_its_name_alone() -> None:
@@ -68,7 +56,7 @@ def test_tiny_budgets_end_with_a_design(evaluations: int) -> None:
     budget = Budget(evaluations)
     pool, progress, reason = search(problem, found, budget, seed=1, starts=STARTS)
     assert reason is StopReason.EVALUATIONS
-    assert evaluations <= budget.used <= evaluations + BATCH
+    assert 0 < budget.used <= evaluations
     assert pool.best is not None
     again = problem.exact(*found.patterns(pool.best.z))
     assert again.worst_margin == pool.best.evaluation.worst_margin
@@ -82,7 +70,7 @@ def test_tiny_budgets_of_problems_that_are_not_linear(evaluations: int) -> None:
     budget = Budget(evaluations)
     pool, _, reason = search(Problem(part, part, [stiff], []), both_free(part, part), budget, seed=1, starts=STARTS)
     assert reason is StopReason.EVALUATIONS
-    assert budget.used <= evaluations + BATCH
+    assert 0 < budget.used <= evaluations
     assert pool.best is not None
 
 

@@ -77,6 +77,7 @@ def verification() -> dict[str, Any]:
     gap = np.linspace(0.1, 8.0, 80) * MM
     force = force_curve(1).values[0]
     return {
+        "design": "d1",
         "second_path": {
             "ok": True,
             "tolerance": 1e-6,

@@ -124,4 +124,4 @@ def test_a_spec_without_poses_is_looked_at_where_its_cells_suit() -> None:
     a = stripes((6, 8), 2)
     found = ways(spec_of(require("pole_count", "at_most = 9")), a, a)
     labels = [row["label"] for row in found["mover turned by 180 deg"]["values"]]
-    assert labels == ["axial force at 0.3 mm", "axial force at 1 mm", "axial force at 3 mm", "pole_count of both"]
+    assert labels == ["axial force at 0.3 mm", "axial force at 1 mm", "axial force at 3 mm", "pole_count of both parts"]

@@ -4,12 +4,10 @@ from __future__ import annotations
 
 import os
 import signal
-from collections.abc import Iterator
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-import jax
 import numpy as np
 import pytest
 from polewright.models.errors import InputError
@@ -28,13 +26,6 @@ from .specs import NEAR_FAR, SEARCHED, differences, spec_text, write
 PRINTED = 6e-7
 """Half of the last digit of reference values printed to 1e-6 N."""
 HOLD = '[[improve]]\nquantity = "holding_force"\ngap_mm = {gap}\nsense = "maximize"\n'
-
-
-@pytest.fixture(autouse=True)
-def ranks_allowed() -> Iterator[None]:
-    """As in the tests of the walk itself."""
-    with jax.numpy_rank_promotion("allow"):
-        yield
 
 
 def text_of(pattern: np.ndarray[Any, Any]) -> str:
@@ -138,8 +129,7 @@ def test_a_cap_in_seconds_is_told_as_not_reproducible() -> None:
 def whole(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """The archive of an uninterrupted run, beside its spec."""
     folder = tmp_path_factory.mktemp("whole")
-    with jax.numpy_rank_promotion("allow"):
-        design(write(folder / "s.toml", SEARCHED), output=folder / "s.h5")
+    design(write(folder / "s.toml", SEARCHED), output=folder / "s.h5")
     return folder / "s.h5"
 
 

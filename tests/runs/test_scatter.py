@@ -95,7 +95,7 @@ def test_imbalance_is_the_floor_of_a_moment_that_cancels() -> None:
     base, _ = parts(spec)
     cell = base.remanence / MU0 * base.cell**2 * base.thickness
     floor = record["imbalance_floor"]
-    assert floor == {"net_moment of base [A m2]": pytest.approx(0.01 * 48 * cell)}
+    assert floor == {"net_moment of the base [A m2]": pytest.approx(0.01 * 48 * cell)}
     assert record["requirements"][0]["costliest"] == "N/S imbalance"  # type: ignore[index]
 
 

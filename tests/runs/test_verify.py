@@ -215,4 +215,4 @@ def test_a_disagreement_is_shown_by_the_command(tmp_path: Path, capsys: pytest.C
     path = tmp_path / "run.h5"
     write_run(held(2.0 * float(held().designs[0].values[0])), path)
     assert cli.run(["verify", str(path)]) == 0
-    assert "second path DISAGREES: holding_force" in " ".join(capsys.readouterr().err.split())
+    assert "Second path: Disagreement in holding_force" in " ".join(capsys.readouterr().err.split())
