@@ -16,7 +16,7 @@ from ..judged import number
 from ..records import Design, Run
 from ..resolve import problem_of
 from ..spec import Entry, Improve, PartSpec, Require, Spec, spec_from_json
-from .extras import Baseline, ForceMark, ReportExtras
+from .extras import Baseline, ForceMark, Mark, ReportExtras, RestMark
 from .maps import stray_maps
 
 Pattern = NDArray[np.int8]
@@ -53,10 +53,12 @@ def baselines(spec: Spec, problem: Problem, design: Design) -> tuple[Baseline, .
     return tuple(out)
 
 
-def force_marks(spec: Spec) -> tuple[ForceMark, ...]:
-    """Return what the spec asks of the axial force with the mover centred, as bounds on F_z."""
-    marks: list[ForceMark] = []
+def force_marks(spec: Spec) -> tuple[Mark, ...]:
+    """Return what the spec asks of the axial force with the mover centred, as bounds on F_z, and of stand-offs."""
+    marks: list[Mark] = []
     for entry in _entries(spec):
+        if entry.quantity == "stand_off" and isinstance(entry, Require):
+            marks.append(_rest(entry))
         sign = _FORCES.get(entry.quantity)
         if sign is None or np.any(np.asarray(entry.settings.get("offset_mm", 0.0), float)):
             continue
@@ -92,6 +94,19 @@ def _balances(run: Run, problem: Problem, design: Design) -> tuple[str, ...]:
 
 def _entries(spec: Spec) -> tuple[Entry, ...]:
     return (*spec.require, *spec.improve)
+
+
+def _rest(entry: Require) -> RestMark:
+    low, high = to_si(np.asarray(entry.settings["between_mm"], float), "mm").tolist()
+    value = to_si(entry.bounds[0], "mm")
+    within = to_si((entry.bands or (0.0,))[0], "mm")
+    if entry.kind == "equal_to":
+        low, high = value - within, value + within
+    elif entry.kind == "at_least":
+        low = value
+    else:
+        high = value
+    return RestMark(float(np.asarray(entry.settings.get("load_N", 0.0))), low, high)
 
 
 def _bounds(entry: Require, sign: float, gaps: list[float]) -> list[ForceMark]:

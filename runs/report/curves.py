@@ -12,7 +12,7 @@ from matplotlib.patches import Rectangle
 
 from ...models.units import from_si
 from ..records import Curve
-from .extras import Array, ForceMark
+from .extras import Array, ForceMark, Mark, RestMark
 from .figures import GRID, INK, svg_figure
 
 _LINE = "#1d4a52"
@@ -21,7 +21,7 @@ _BOUND = "#8a4b08"
 _WIDE_RANGE = 12.0
 
 
-def force_gap_figure(curve: Curve, position: int, marks: Sequence[ForceMark], band: Mapping[str, Any] | None) -> str:
+def force_gap_figure(curve: Curve, position: int, marks: Sequence[Mark], band: Mapping[str, Any] | None) -> str:
     """Return the curve of one design as inline SVG.
 
     Args:
@@ -52,16 +52,16 @@ def equilibria(gap: Array, force: Array) -> list[float]:
     return [float(gap[n] + (gap[n + 1] - gap[n]) * force[n] / (force[n] - force[n + 1])) for n in falling]
 
 
-def _smallest_level(force: Array, marks: Sequence[ForceMark]) -> float:
+def _smallest_level(force: Array, marks: Sequence[Mark]) -> float:
     """Size of the smallest force that a reader must still tell from zero [N]."""
-    levels = [abs(mark.force) for mark in marks if mark.force != 0.0]
+    levels = [abs(mark.force) for mark in marks if isinstance(mark, ForceMark) and mark.force != 0.0]
     # the weaker of the two directions, where the curve has both
     levels += [size for size in (float(force.max()), float(-force.min())) if size > 0.02 * np.abs(force).max()]
     return max(min(levels, default=1.0), 1e-3 * float(np.abs(force).max()), 1e-9)
 
 
 def _plot(
-    plot: Axes, gap: Array, force: Array, marks: Sequence[ForceMark], band: Mapping[str, Any] | None, zoom: float | None
+    plot: Axes, gap: Array, force: Array, marks: Sequence[Mark], band: Mapping[str, Any] | None, zoom: float | None
 ) -> None:
     if band is not None:
         x = np.asarray(from_si(np.asarray(band["gap"], float), "mm"), float)
@@ -77,17 +77,18 @@ def _plot(
     plot.set_ylim(low, high)
     plot.set_xlim(0.0, float(gap[-1]) * 1.02)
     _draw_marks(plot, marks, float(gap[-1]), low, high)
-    for stable in equilibria(gap, force):
-        plot.plot([stable], [0.0], marker="D", ms=5, color=INK, mfc="white", ls="", zorder=5, clip_on=False)
-        words = f"stable on a guide\nat {stable:.3g} mm"
-        plot.annotate(words, (stable, 0.0), (6, 8), textcoords="offset points", fontsize=8)
+    for load in sorted({mark.load for mark in marks if isinstance(mark, RestMark)} or {0.0}):
+        for stable in equilibria(gap, force - load):
+            plot.plot([stable], [load], marker="D", ms=5, color=INK, mfc="white", ls="", zorder=5, clip_on=False)
+            words = "stable on a guide\n" + (f"under {load:.3g} N " if load else "") + f"at {stable:.3g} mm"
+            plot.annotate(words, (stable, load), (6, 8), textcoords="offset points", fontsize=8)
     plot.grid(color=GRID, lw=0.6)
     plot.set_axisbelow(True)
     plot.set_ylabel("axial force on the mover [N]")
     plot.spines[["top", "right"]].set_visible(False)
 
 
-def _draw_marks(plot: Axes, marks: Sequence[ForceMark], longest: float, low: float, high: float) -> None:
+def _draw_marks(plot: Axes, marks: Sequence[Mark], longest: float, low: float, high: float) -> None:
     half, deep = 0.016 * longest, 0.09 * (high - low)
     named: set[str] = set()
 
@@ -97,6 +98,11 @@ def _draw_marks(plot: Axes, marks: Sequence[ForceMark], longest: float, low: flo
         return text if first else "_nolegend_"
 
     for mark in marks:
+        if isinstance(mark, RestMark):
+            ends = [from_si(mark.low, "mm"), min(from_si(mark.high, "mm"), longest)]
+            plot.plot(ends, [mark.load] * 2, color=_BOUND, lw=3.5, alpha=0.7, solid_capstyle="butt",
+                      label=label("required stand-off"))  # fmt: skip
+            continue
         x = from_si(mark.gap, "mm")
         if mark.kind in ("at_least", "at_most"):
             below = mark.kind == "at_least"

@@ -42,6 +42,24 @@ class ForceMark:
 
 
 @dataclass(frozen=True)
+class RestMark:
+    """A bound on a stand-off, for the force-gap curve.
+
+    Attributes:
+        load: Load on the mover [N].
+        low: Where the mover may come to rest, from [m].
+        high: To [m].
+    """
+
+    load: float
+    low: float
+    high: float
+
+
+Mark = ForceMark | RestMark
+
+
+@dataclass(frozen=True)
 class Outline:
     """A closed line on a field map: ``points`` (n, 2) [m], dashed when it lies off the plane that is shown."""
 
@@ -91,7 +109,7 @@ class ReportExtras:
     """
 
     baselines: tuple[Baseline, ...] = ()
-    marks: tuple[ForceMark, ...] = ()
+    marks: tuple[Mark, ...] = ()
     maps: tuple[FieldMap, ...] = ()
     balances: tuple[str, ...] = ()
     needs_guide: bool = False

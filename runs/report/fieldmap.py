@@ -16,6 +16,8 @@ from .figures import INK, svg_figure
 # the line of implants, then decades and halves
 LEVELS = (0.05, 0.1, 0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0, 200.0, 500.0, 1000.0)
 BOLD = (0.5, 5.0, 50.0)
+_ROOM = 0.035
+"""Share of a map's height that a part must have for its name to stand on it."""
 
 
 def field_figure(maps: Sequence[FieldMap], names: str) -> list[str]:
@@ -50,12 +52,17 @@ def _one(field_map: FieldMap, levels: list[float], name: str) -> str:
         texts = plot.clabel(lines, marked, fmt=lambda level: f"{level:g} mT", fontsize=8)
         for text in texts:
             text.set_bbox({"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.85})
+        right = max((float(from_si(outline.points[:, 0].max(), "mm")) for outline in field_map.outlines), default=0.0)
         for outline in field_map.outlines:
             corners = from_si(np.vstack([outline.points, outline.points[:1]]), "mm")
             plot.plot(*corners.T, color=INK, lw=1.1, ls="--" if outline.dashed else "-")
             box = {"facecolor": "white", "edgecolor": "none", "pad": 0.4, "alpha": 0.7}
             middle = from_si(outline.points.mean(axis=0), "mm")
-            plot.annotate(outline.label, tuple(middle), ha="center", va="center", fontsize=7, bbox=box)
+            if np.ptp(corners[:, 1]) > _ROOM * np.ptp(y):
+                plot.annotate(outline.label, tuple(middle), ha="center", va="center", fontsize=7, bbox=box)
+            elif outline.label:  # words would hide so slim a part
+                plot.annotate(outline.label, (right, middle[1]), (4, 0), textcoords="offset points", va="center",
+                              fontsize=7, bbox=box)  # fmt: skip
         plot.set_aspect("equal")
         plot.set_xlabel(f"{field_map.x_label} [mm]")
         plot.set_ylabel(f"{field_map.y_label} [mm]")

@@ -185,7 +185,7 @@ def _scatter(scatter: Record) -> str:
         f"pairs (seed {scatter['seed']}) meet every requirement.</p>",
         scatter_table(scatter["requirements"]),
         _sentences(accuracy(scatter["requirements"]), small=True),
-        _sentences([f"{note[:1].upper()}{note[1:]}." for note in scatter.get("notes", [])], small=True),
+        _sentences(scatter.get("notes", []), small=True),
     ]
     if scatter.get("imbalance_floor"):
         out.append(_floor(scatter["imbalance_floor"]))

@@ -24,6 +24,7 @@ table{break-inside:avoid;border-collapse:collapse;width:100%;font-size:9.5pt;lin
 th{text-align:left;font-weight:600;border-bottom:.3mm solid #1a1a1a;padding:1mm 1.6mm;vertical-align:bottom}
 th.group{text-align:center;border-bottom:.2mm solid #999;font-weight:400}
 td{padding:.9mm 1.6mm;border-top:.15mm solid #ccc;vertical-align:top}
+table.requirements td,table.requirements th{padding-left:1.2mm;padding-right:1.2mm}
 table.requirements td{border-top-color:transparent}
 table.requirements tr.first td{border-top-color:#bbb;padding-bottom:0}
 table.requirements td.small{padding-left:4mm;white-space:nowrap}
@@ -40,6 +41,7 @@ svg.plot{display:block;width:100%;height:auto}
 .faces figure{max-width:100%}
 .scroll{overflow-x:auto;max-width:100%}
 svg.face,svg.legend{display:block;flex:none}
+svg.legend{max-width:100%;height:auto}
 ul{margin:0 0 3mm;padding-left:5mm}
 li{margin-bottom:1.2mm}
 ul.assembly li.danger{color:#6d180d}

@@ -101,7 +101,8 @@ def _merged(values: Sequence[Mapping[str, Any]]) -> list[str]:
     for rows in groups:
         unit = str(rows[0]["unit"])
         shown = numbers(tuple(_shown(row["value"], unit) for row in rows))
-        found.append(f"{escape(merged_label([str(row['label']) for row in rows]))}: {shown} {_unit(unit)}".rstrip())
+        label = escape(merged_label([str(row["label"]) for row in rows]))
+        found.append(f"{label}: {shown}" if shown == "none" else f"{label}: {shown} {_unit(unit)}".rstrip())
     return found
 
 
@@ -184,7 +185,7 @@ def _scatter_cells(entry: Judged, row: Mapping[str, Any] | None, element: int, c
     cells = []
     if element == 0:
         cells.append(f'<td class="number" rowspan="{count}">{100.0 * row["share"]:.1f} %</td>')
-    ends = (number(_shown(row[key][element], entry.unit)) for key in ("p5", "p95"))
+    ends = (_short(_shown(row[key][element], entry.unit)) for key in ("p5", "p95"))
     return [*cells, *(f'<td class="number">{end}</td>' for end in ends)]
 
 
@@ -192,7 +193,7 @@ def _baseline_cell(baseline: Baseline, column: Column, index: int) -> str:
     value = float(baseline.values[index])
     met = _meets(column, value)
     mark = "" if met is None else ' <span class="yes">✓</span>' if met else ' <span class="no">✗</span>'
-    return f'<td class="number">{number(from_si(value, column.unit))}{mark}</td>'
+    return f'<td class="number">{_short(from_si(value, column.unit))}{mark}</td>'
 
 
 def _meets(column: Column, value: float) -> bool | None:
@@ -204,6 +205,11 @@ def _meets(column: Column, value: float) -> bool | None:
     if column.kind == "at_most":
         return value <= column.bound
     return abs(value - column.bound) <= (column.within or 0.0)
+
+
+def _short(value: float) -> str:
+    """Three digits, for columns that stand close together."""
+    return number(float(f"{value:.3g}"))
 
 
 def _small(difference: float) -> str:

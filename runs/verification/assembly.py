@@ -30,6 +30,8 @@ _UNCHANGED = 1e-7
 """Differences below this share of the largest force or of a value are rounding."""
 _MATTERS = 0.02
 """A force below this share of the largest one has no sign to speak of."""
+_TELLING = 10.0
+"""A force this many times one near its zero tells nothing by its factor."""
 _STRONGER = 1.5
 """A force this many times the nominal one is dangerous to those who do not expect it."""
 
@@ -173,7 +175,7 @@ def _forces_in_words(rows: list[Row], nominal: Array, forces: Array) -> tuple[st
     if flips[n]:
         words = f"It {_does(after)} {where} instead of {_doing(before)}."
     elif stronger[n]:
-        words = f"It {_does(after)} {where}{_times(after, before)} instead of {number(abs(before))} N."
+        words = f"It {_does(after)} {where} instead of {number(abs(before))} N{_times(after, before)}."
     else:
         words = f"It {_does(after)} {where} instead of {number(abs(before))} N."
     return words, bool(grave.any())
@@ -188,7 +190,7 @@ def _doing(force: float) -> str:
 
 
 def _times(after: float, before: float) -> str:
-    return f", {abs(after / before):.1f} times as much," if before else ", much more,"
+    return f", {abs(after / before):.1f} times as much" if abs(after) < _TELLING * abs(before) else ", much more"
 
 
 def _where(row: Row) -> str:

@@ -175,11 +175,13 @@ def _percentiles(values: Array) -> tuple[list[float], list[float]]:
 
 def _notes(spec: Spec, floor: dict[str, float]) -> list[str]:
     notes = [
-        "every tolerance is drawn uniformly within plus and minus its stated half width, independent of the others",
-        "costliest: the tolerance that alone, at its worse limits, lowers the margin most",
+        "Every tolerance is drawn uniformly within plus and minus its stated half width, independent of the others.",
+        "The costliest tolerance is the one that alone, at its worse limits, lowers the margin most.",
     ]
     if spec.tolerances.angle_deg > 0.0:
-        notes.append("angle_deg is not sampled: the pairs stand at their nominal angle")
+        notes.append("Turning errors (angle_deg) are not sampled: the pairs stand at their nominal angle.")
     if floor:
-        notes.append("imbalance_floor: the nominal pair with the N/S imbalance of both parts alone at its worse limits")
+        notes.append(
+            "The imbalance floor is the nominal pair with the N/S imbalance of both parts alone at its worse limits."
+        )
     return notes

@@ -9,7 +9,6 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from ..judged import number
 from ..records import Design, Run
 
 Record = Mapping[str, Any]
@@ -55,7 +54,7 @@ def accuracy(rows: Sequence[Record]) -> list[str]:
         errors = [row.get("error") for row in members]
         # an error without a number is one of a value that only one of the two found
         largest = max((float(error) for error in errors if error is not None), default=0.0)
-        size = "without limit" if None in errors else f"{number(100.0 * largest)} %"
+        size = "without limit" if None in errors else f"{max(100.0 * largest, 0.01):.2g} %"
         if method.startswith("interpolation"):
             found.append(
                 f"Figures{whose} come from interpolation; on held-out pairs that were evaluated exactly it is off by "
@@ -91,17 +90,22 @@ class WrongWay:
 
 def wrong_ways(found: Record) -> tuple[WrongWay, ...]:
     """Return the wrong ways to assemble a verified pair, those that say the same together, the dangerous ones first."""
-    groups: dict[tuple[str, bool], list[Record]] = {}
+    groups: dict[str, list[Record]] = {}
     for way in found.get("assembly", []):
-        groups.setdefault((str(way["text"]), bool(way["dangerous"])), []).append(way)
-    merged = [
-        WrongWay(
-            _names([str(way["name"]) for way in ways]), text, dangerous, bool(ways[0].get("changes", True)),
-            bool(ways[0].get("likely", True)), tuple(ways[0]["values"]),
-        )
-        for (text, dangerous), ways in groups.items()
-    ]  # fmt: skip
+        # what a guide prevents is one matter, however its numbers differ
+        same = str(way["text"]) if way["likely"] or not way["changes"] else ""
+        groups.setdefault(same, []).append(way)
+    merged = [_together(ways) for ways in groups.values()]
     return tuple(sorted(merged, key=lambda way: (not way.dangerous, not way.changes)))
+
+
+def _together(ways: list[Record]) -> WrongWay:
+    first = ways[0]
+    text = str(first["text"])
+    if len({str(way["text"]) for way in ways}) > 1:
+        text = f"Of the first of these: {text}"
+    name = _names([str(way["name"]) for way in ways])
+    return WrongWay(name, text, first["dangerous"], first["changes"], first["likely"], tuple(first["values"]))
 
 
 def harmless(ways: Sequence[WrongWay]) -> str:

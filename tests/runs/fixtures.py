@@ -114,9 +114,11 @@ def verification() -> dict[str, Any]:
         "assembly": [
             {"name": "mover turned by 180 deg",
              "text": "Holds at every gap instead of pushing away: the hatch would not open by itself.",
-             "values": [{"label": "axial_force at 3 mm", "unit": "N", "value": -3.4}], "dangerous": True},
+             "values": [{"label": "axial_force at 3 mm", "unit": "N", "value": -3.4}], "changes": True,
+             "likely": True, "dangerous": True},
             {"name": "mover shifted by one pole along x", "text": "Repels at contact.",
-             "values": [{"label": "holding_force at 0.3 mm", "unit": "N", "value": -11.0}], "dangerous": False},
+             "values": [{"label": "holding_force at 0.3 mm", "unit": "N", "value": -11.0}], "changes": True,
+             "likely": False, "dangerous": False},
         ],
     }  # fmt: skip
 
