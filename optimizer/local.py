@@ -68,18 +68,6 @@ class LocalSearch:
                 best, best_z = reached, z.copy()
         return best_z
 
-    def sign_iteration(self, z: Array, weights: Array, sweeps: int = 20) -> Array:
-        """Repeat z <- sign of the weighted forms' slopes, part by part, until nothing changes."""
-        for _ in range(sweeps):
-            before = z.copy()
-            for owner in (0, 1):
-                mine = self.forms.layout.owner == owner
-                pull = weights @ self.forms.slopes(z)
-                z = np.where(mine & (pull != 0.0), np.sign(pull), z)
-            if (z == before).all():
-                break
-        return z
-
     def _score(self, values: Array) -> Array:
         """Score of forms (..., form); slightly soft, so that conditions next to the worst one count too."""
         count = self.forms.counts.size

@@ -22,9 +22,11 @@ from .stopping import Budget, StopReason
 
 Array = NDArray[np.float64]
 
-_ROUNDS = 40
-_PATIENCE_MET, _PATIENCE_MISSED = 5, 20
-"""Rounds without a gain that end a run whose best design meets every require, or does not."""
+_ROUNDS = 1000
+"""More stages than any budget pays for; it only bounds a run whose stages book nothing."""
+_PATIENCE = {True: (8, 20), False: (3, 6)}
+"""Rounds without a gain that end a run whose best design meets every require, or does not: many where walks can search,
+which are cheap, few elsewhere."""
 _ISLAND_PATIENCE = 3
 """Rounds without a gain that end an island: a new population finds other basins sooner than an old one leaves its."""
 _GAIN = 1e-3
@@ -107,7 +109,7 @@ def search(
         if on_stage is not None:
             on_stage(pool, progress)
         met = pool.best is not None and pool.best.evaluation.feasible
-        if progress.stage >= 3 and progress.stale >= (_PATIENCE_MET if met else _PATIENCE_MISSED):
+        if progress.stale >= _PATIENCE[problem.has_linear_core][0 if met else 1]:
             break
     return pool, progress, StopReason.PLATEAU
 

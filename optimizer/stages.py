@@ -40,7 +40,8 @@ _JUDGED = STARTS
 """Designs of a stage that are judged exactly, best first by the search's own score."""
 _POLISHED = 3
 _POLISH_STEPS = 150
-_LOCAL_STEPS = 600
+_REFINED = 2
+_LOCAL_STEPS = 250
 _PROGRAMS = 4
 _AMPLITUDE = 0.1
 _FAR = 0.1
@@ -129,9 +130,8 @@ class Stages:
     def _wants_relaxed(self, number: int, age: int) -> bool:
         """Is it the turn of relaxed design in a problem that walks can search?"""
         best = self.pool.best
-        far = best is None or (not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR)
-        if not self.problem.is_linear:
-            return number % 2 == 1
+        missed = best is None or not best.evaluation.feasible
+        far = missed and (best is None or best.evaluation.worst_margin < -_FAR or not self.problem.is_linear)
         begins = age == 0 and self._island % 2 == 1 and (far or bool(self.problem.improves))
         return begins or (number == 1 and far)
 
@@ -193,13 +193,13 @@ class Stages:
         violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
         steps = _FIRST_WALK if fresh else _WALK
         found = tabu.run(np.stack(starts), random, self.budget, steps, _SOFTNESS, violation)
-        self._add(np.stack([self._fine(z) for z in found]), "polish")
+        self._add(np.stack([self._fine(z) for z in found]), "search")
 
     def _refine(self, random: np.random.Generator) -> None:
         """Moves of whole windows on the fine lattice, keeping the pole width."""
         if self._local is None or max(self.layout.brushes) == 1:
             return
-        for candidate in self.pool.distinct(_POLISHED):
+        for candidate in self.pool.distinct(_REFINED):
             self.pool.add(self._local.run(candidate.z, random, _LOCAL_STEPS, self.budget), "polish", self._island)
 
     def _calibrate(self) -> None:

@@ -43,13 +43,14 @@ def write_run(run: Run, path: Path) -> None:
     put_in_place(path, image + _seal(image))
 
 
-def read_run(path: Path) -> Run:
+def read_run(path: str | Path) -> Run:
     """Return the run stored at ``path``.
 
     Raises:
         InputError: When there is no such file, it is not HDF5, cut short, another program's, damaged or of a newer
             format.
     """
+    path = Path(path)
     try:
         _check_seal(path)
         with h5py.File(path, "r") as file:

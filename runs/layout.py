@@ -1,6 +1,6 @@
 """Layout of an archive: a run as groups of named arrays and back, without any file format (see ``archive``).
 
-The layout is DESIGN section 9, ``format_version`` 1. All numbers are SI; every numeric variable carries its unit and
+This is ``format_version`` 1. All numbers are SI; every numeric variable carries its unit and
 names its dimensions. A variable that is named like its only dimension is the scale (coordinate) of that dimension;
 each group carries its own scales, so each opens as one self-contained xarray dataset.
 """

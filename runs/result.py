@@ -1,4 +1,4 @@
-"""The result of a command as one JSON object, and the exit code that goes with it (DESIGN section 8)."""
+"""The result of a command as one JSON object, and the exit code that goes with it."""
 
 from __future__ import annotations
 

@@ -6,11 +6,13 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from ..models.pair import Row
 from ..models.part import Part
 from ..models.units import from_si
 from ..objectives.problem import Problem
 from ..optimizer.stopping import StopReason
-from .records import Design
+from .records import Column, Design
+from .resolve import columns_of
 from .spec import PartSpec, Spec
 
 _RIM = 1e-9
@@ -20,14 +22,18 @@ def warnings_of(spec: Spec, problem: Problem, designs: Sequence[Design], reason:
     """Return what the spec and its outcome call for, most important first."""
     found = ["IDEAL: sharp pole edges and full magnetization depth are assumed; a real part is weaker at its edges."]
     if designs and not designs[0].feasible:
-        found.append("The best design misses a requirement; nothing says that no better one exists.")
+        found.append(
+            "No pattern pair on these cells meets every requirement: all were looked at."
+            if reason is StopReason.PROVEN
+            else "The best design misses a requirement; nothing says that no better one exists."
+        )
     if reason is StopReason.SECONDS:
         found.append("The cap in seconds ended the run: it is not reproducible.")
     entries = (*spec.require, *spec.improve)
     if any(entry.quantity == "stand_off" for entry in entries):
         found.append(
             "A stand-off is stable only on a guide: rigid magnets that rest axially are unstable sideways or in tilt "
-            "(Earnshaw)."
+            "(Earnshaw)." + _at_stand_off(problem, designs, columns_of(spec))
         )
     if spec.conditions.rotation == "free":
         found.append(
@@ -42,6 +48,20 @@ def warnings_of(spec: Spec, problem: Problem, designs: Sequence[Design], reason:
     return tuple(found)
 
 
+def _at_stand_off(problem: Problem, designs: Sequence[Design], columns: Sequence[Column]) -> str:
+    """Tilt moment and lateral stiffness of the best design where it stands off."""
+    gaps = [float(v) for v, column in zip(designs[0].values, columns, strict=True) if column.name == "stand_off"]
+    if not gaps or not np.isfinite(gaps[0]):
+        return ""
+    rows: list[Row] = [Row(component, gaps[0]) for component in ("mx", "my", "kxx", "kyy", "kxy")]
+    mx, my, kxx, kyy, kxy = problem.case(designs[0].base, designs[0].mover).pair(rows)
+    stiffness = -(kxx + kyy) / 2.0 - float(np.hypot((kxx - kyy) / 2.0, kxy))
+    return (
+        f" At {from_si(gaps[0], 'mm'):.3g} mm the tilt moment is {from_si(float(np.hypot(mx, my)), 'N mm'):.3g} N mm and "
+        f"the lateral stiffness {from_si(stiffness, 'N/mm'):.3g} N/mm (negative pushes off the centre)."
+    )
+
+
 def _of_part(name: str, part: Part, spec: PartSpec) -> list[str]:
     """What one part's blank and material call for."""
     found = []
@@ -50,9 +70,12 @@ def _of_part(name: str, part: Part, spec: PartSpec) -> list[str]:
         found.append(f"{name}: {rim[0]:.3g} mm in x and {rim[1]:.3g} mm in y beyond whole cells stay unmagnetized.")
     if spec.material.from_memory:
         found.append(f"{name}: the numbers of {spec.material.name} are from memory; check them with your supplier.")
+    width = from_si(np.ceil(spec.pole_width_min_mm / spec.cell_mm - 1e-9) * part.cell, "mm")
+    if spec.pattern == "free" and width > spec.pole_width_min_mm * (1.0 + 1e-9):
+        found.append(f"{name}: poles are whole cells wide: {spec.pole_width_min_mm:g} mm becomes {width:g} mm.")
     if spec.material.recoil_permeability > 1.0:
         found.append(
-            f"{name}: recoil permeability {spec.material.recoil_permeability:g} is stored but not modelled yet; expect "
-            "a few percent less force."
+            f"{name}: recoil permeability {spec.material.recoil_permeability:g} is stored but not modelled yet: the "
+            "magnet is taken as rigid."
         )
     return found

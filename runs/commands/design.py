@@ -20,6 +20,7 @@ def command(
     spec: Path, output: Path | None, start_from: Path | None, resume: bool, replace: bool, as_json: bool
 ) -> int:
     """Find pole patterns that meet SPEC, at most one improve, and write them to an archive."""
+    from ..archive import read_run
     from ..execute import design
     from ..progress import shown
     from ..result import EXIT_CODES, result_json, status_of
@@ -28,7 +29,7 @@ def command(
     started = time.perf_counter()
     path = output if output is not None else Path(f"{spec.stem}.h5")
     console = stderr_console()
-    done = resume and path.exists()
+    finished = resume and path.exists() and read_run(path).complete
     with shown(console, quiet=as_json) as watch:
         run = design(spec, output=path, replace=replace, resume=resume, start_from=start_from, watch=watch)
     status = status_of(run)
@@ -40,6 +41,6 @@ def command(
         console.print(f"{'Complete' if run.complete else 'Unfinished'} run in {path}", markup=False, highlight=False)
         if not run.complete:
             console.print(f"Continue it with: polewright design {spec} -o {path} --resume", markup=False)
-        elif done:
-            console.print("The run was complete already or has been continued to its end.", markup=False)
+        elif finished:
+            console.print("It was complete already; only a larger budget would continue it.", markup=False)
     return EXIT_CODES[status]

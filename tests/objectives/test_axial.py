@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any
 
 import numpy as np
@@ -14,7 +15,7 @@ from polewright.models.patterns import checker, stripes, uniform
 from polewright.models.second_path import pair_force, pair_moment
 from polewright.objectives.axial import StandOff
 from polewright.objectives.case import Case
-from polewright.objectives.plan import Plan
+from polewright.objectives.plan import Plan, Response
 from polewright.objectives.quantity import Bound
 from scipy.integrate import quad
 from scipy.optimize import brentq
@@ -124,15 +125,11 @@ def test_an_unstable_zero_is_no_stand_off() -> None:
     assert reversed_pair == pytest.approx(TWO_RADII_ZERO_MM * MM, rel=0.03)
 
 
-class Curve(Case):
+def curve(force: Callable[[Array], Array]) -> Case:
     """A case whose force is a given function of the gap."""
-
-    def __init__(self, force: Any) -> None:
-        self.base, self.mover = BASE, MOVER
-        self._force = force
-
-    def axial_force(self, gaps: Array) -> Array:
-        return np.asarray(self._force(gaps))
+    ones = (np.ones(BASE.shape), np.ones(MOVER.shape))
+    response = Response(np, np.zeros(0), np.zeros(0), *ones)
+    return Case(BASE, MOVER, response, lambda rows: np.asarray(force(np.array([row.gap for row in rows]))))
 
 
 def stand_off(low_mm: float, high_mm: float, load: float = 0.0) -> StandOff:
@@ -141,14 +138,14 @@ def stand_off(low_mm: float, high_mm: float, load: float = 0.0) -> StandOff:
 
 def test_of_several_stand_offs_the_innermost_counts() -> None:
     """A sine falls through zero at pi, 3 pi, ...: here at 1, 3, 5 mm."""
-    wave = Curve(lambda gaps: np.sin(np.pi * gaps / MM))
+    wave = curve(lambda gaps: np.sin(np.pi * gaps / MM))
     assert stand_off(0.2, 6.5).exact(wave) == pytest.approx([1.0 * MM], rel=1e-8)
     assert stand_off(1.2, 6.5).exact(wave) == pytest.approx([3.0 * MM], rel=1e-8)
     assert np.isnan(stand_off(1.2, 2.8).exact(wave)).all()
 
 
 def test_a_stand_off_on_the_last_sample_is_found() -> None:
-    falling = Curve(lambda gaps: 2.0 * MM - gaps)
+    falling = curve(lambda gaps: 2.0 * MM - gaps)
     assert stand_off(0.5, 2.0).exact(falling) == pytest.approx([2.0 * MM], rel=1e-8)
 
 

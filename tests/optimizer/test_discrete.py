@@ -145,18 +145,6 @@ def test_local_search_keeps_the_pole_width(rule: str) -> None:
     assert np.array_equal(search.run(z, np.random.default_rng(8), 150, Budget(0)), z)
 
 
-def test_sign_iteration_ends_where_no_single_flip_helps() -> None:
-    problem, found = CASES["free"]
-    search = LocalSearch(ConditionForms(problem, found))
-    weights = np.array([1.0, 0.2])
-    z = signs(np.random.default_rng(9), found.count)
-    out = search.sign_iteration(z, weights, sweeps=100)
-    before, after = (float(weights @ search.forms.values(each)) for each in (z, out))
-    assert after >= before
-    flips = out * (1.0 - 2.0 * np.eye(found.count))
-    assert max(float(weights @ search.forms.values(other)) for other in flips) <= after + 1e-9
-
-
 def test_polish_never_returns_worse() -> None:
     part = plate(6, 6)
     problem = curved(part, part)

@@ -41,14 +41,12 @@ def spec_text(
     return (
         'spec_version = 1\ntitle = "Invented plates"\n\n[base]\n'
         + PART.format(size=cells * cell, cell=cell)
-        + f"{base}\n[mover]\nlike = \"base\"\n{mover}\n{wanted}\n[search]\n{search}\n"
+        + f'{base}\n[mover]\nlike = "base"\n{mover}\n{wanted}\n[search]\n{search}\n'
     )
 
 
 # two stages and more of a search that cannot be enumerated, in a few seconds
-SEARCHED = spec_text(
-    5, cell=1.0, wishes=NEAR_FAR.format(near=2.0, far=0.03), search="starts = 4\nevaluations = 40000"
-)
+SEARCHED = spec_text(5, cell=1.0, wishes=NEAR_FAR.format(near=2.0, far=0.03), search="starts = 4\nevaluations = 40000")
 
 
 def write(path: Path, text: str) -> Path:

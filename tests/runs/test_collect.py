@@ -9,6 +9,7 @@ import pytest
 from polewright.models.stray import field, place_base
 from polewright.runs.records import Run
 from polewright.runs.report.collect import baselines, collect_extras, force_marks
+from polewright.runs.report.extras import ForceMark, RestMark
 from polewright.runs.report.maps import stray_maps
 from polewright.runs.resolve import problem_of
 from polewright.runs.spec import Spec, parse_spec, part_of
@@ -73,7 +74,7 @@ def spec_with(text: str = SPEC) -> tuple[Spec, Run]:
 
 def test_bounds_on_the_hold_are_bounds_on_the_axial_force_with_the_sign_turned() -> None:
     spec, _ = spec_with()
-    marks = force_marks(spec)
+    marks = [mark for mark in force_marks(spec) if isinstance(mark, ForceMark)]
     assert [(mark.kind, mark.force) for mark in marks] == [
         ("at_most", -5.0), ("at_least", -2.0), ("at_least", -1.0), ("equal_to", 1.0), ("toward", -4.0),
     ]  # fmt: skip
@@ -134,3 +135,14 @@ def test_extras_follow_the_conditions_of_the_spec() -> None:
     stand_off = 'quantity = "stand_off"\nbetween_mm = [1, 5]'
     _, run = spec_with(SPEC.replace('quantity = "axial_force"\ngap_mm = 5.0', stand_off))
     assert collect_extras(run, run.designs[0]).needs_guide
+
+
+@pytest.mark.parametrize(
+    ("bound", "low", "high"),
+    [("equal_to = 3.0\nwithin = 0.25", 2.75, 3.25), ("at_least = 2.0", 2.0, 5.0), ("at_most = 4.0", 1.0, 4.0)],
+)
+def test_a_stand_off_is_marked_where_the_mover_may_rest(bound: str, low: float, high: float) -> None:
+    asked = f'[[require]]\nquantity = "stand_off"\nload_N = 0.5\nbetween_mm = [1, 5]\n{bound}\n'
+    spec, _ = spec_with(SPEC + asked)
+    (mark,) = [mark for mark in force_marks(spec) if isinstance(mark, RestMark)]
+    assert (mark.load, mark.low, mark.high) == pytest.approx((0.5, low * MM, high * MM))

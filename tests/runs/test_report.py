@@ -135,7 +135,8 @@ def test_what_an_engineer_looks_for_is_there(html: str) -> None:
     text = " ".join(Page(html).text.split())
     for phrase in (
         "every requirement met", "IDEAL", "sharp edges", "Stable only on a guide", "tightest margin +1.3 %", "uniform",
-        "mover turned by 180 deg: Holds at every gap", "Second physics path: agrees", "91.6 %", "Pinching", "0.5 mT", "Local codes",
+        "mover turned by 180 deg: Holds at every gap", "Second physics path: agrees", "91.6 %", "Pinching",
+        "0.5 mT", "Local codes",
         make_run().spec_sha256, "seed", "stopped", "41200", "polewright design spec.toml", "true scale",
     ):  # fmt: skip
         assert phrase in text, phrase
@@ -157,7 +158,7 @@ def test_marks_that_a_baseline_misses_are_crossed(html: str) -> None:
     assert '30 <span class="yes">✓</span>' in rows[label + 1]
     (label,) = [n for n, row in enumerate(rows) if "axial_force at 3, 4, 5 mm" in row and "colspan" in row]
     assert '-5 <span class="no">✗</span>' in rows[label + 1]
-    assert "<td class=\"small\">4 mm</td>" in rows[label + 2]
+    assert '<td class="small">4 mm</td>' in rows[label + 2]
 
 
 class TestFaces:

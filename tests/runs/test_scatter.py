@@ -130,7 +130,7 @@ def test_same_seed_same_record() -> None:
     assert first == again
     assert first["requirements"] != other["requirements"]
     assert (first["samples"], first["seed"]) == (500, 1)
-    assert any("angle_deg is not sampled" in note for note in first["notes"])  # type: ignore[attr-defined]
+    assert any("(angle_deg) are not sampled" in note for note in first["notes"])  # type: ignore[attr-defined]
 
 
 def test_draws_fill_their_limits_evenly() -> None:
