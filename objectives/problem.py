@@ -94,7 +94,7 @@ class Problem:
         if self.improves:
             quantity, improve = self.quantities[len(self.requires)], self.improves[0]
             return quantity.linear is not None and improve.sense != "toward" and not improve.log
-        return bool(self.counts[: self.constant.size].any())
+        return self.constant.size > 0
 
     @cached_property
     def judged_by_rows(self) -> bool:

@@ -66,6 +66,10 @@ class Pool:
         """The best design of one island."""
         return next((candidate for candidate in self.candidates if candidate.island == island), None)
 
+    def best_of(self, origin: str) -> Candidate | None:
+        """The best design that one kind of search found."""
+        return next((candidate for candidate in self.candidates if candidate.origin == origin), None)
+
     def add(self, z: Array, origin: str, island: int = 0) -> None:
         """Judge rounded variables exactly and keep them if they are among the best; repeats are ignored."""
         key = np.packbits(z > 0.0).tobytes()

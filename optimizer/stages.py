@@ -41,6 +41,7 @@ _JUDGED = STARTS
 _POLISHED = 3
 _POLISH_STEPS = 150
 _REFINED = 2
+_REFINE_EVERY = 4
 _LOCAL_STEPS = 250
 _PROGRAMS = 4
 _AMPLITUDE = 0.1
@@ -99,9 +100,9 @@ class Stages:
     def run(self, number: int, random: np.random.Generator, island: int, age: int) -> None:
         """Run one stage.
 
-        Tabu walks come first wherever conditions are linear, since they are the strongest search a second there;
-        relaxed design follows where they end far from the requires, and begins every second island. Elsewhere relaxed
-        design and polish take turns.
+        Tabu walks come first where everything is linear, since they are the strongest search a second there; relaxed
+        design follows where they end far from the requires, and begins every second island where there is an improve.
+        Elsewhere relaxed design, walks on what is linear, and polish take turns.
 
         Args:
             number: Number of the stage.
@@ -110,42 +111,48 @@ class Stages:
             age: Rounds that it has been bred for.
         """
         self._island = island
-        tabu = self._tabu
-        if number == 0 and tabu is None:
-            self._relaxed(random)
-        elif tabu is not None and not self._wants_relaxed(number, age):
-            self._walks(tabu, random, fresh=STARTS if age == 0 else 0)
-            if self._coarse is not self.layout:
+        if number == 0 and self.tabu is None:
+            self.relaxed(random)
+        elif self.tabu is not None and not self._wants_relaxed(number, age):
+            self.walks(self.tabu, random, fresh=STARTS if age == 0 else 0)
+            if self._coarse is not self.layout and number % _REFINE_EVERY == 1:
                 self._refine(random)
         elif self.problem.is_linear:
-            self._relaxed(random)
+            self.relaxed(random)
             self._refine(random)
         else:
             self._calibrate()
-            self._relaxed(random)
+            self.relaxed(random)
         if not self.problem.is_linear and number > 0:
             self._calibrate()
-            self._polish()
+            self.polish()
 
     def _wants_relaxed(self, number: int, age: int) -> bool:
-        """Is it the turn of relaxed design in a problem that walks can search?"""
+        """Is it the turn of relaxed design in a problem that walks can search?
+
+        Walks see the linear conditions alone. Where there are others, relaxed design comes first, and keeps most of the
+        turns as long as it is ahead.
+        """
+        if not self.problem.is_linear:
+            walked, designed = self.pool.best_of("search"), self.pool.best_of("gradient")
+            ahead = designed is not None and (walked is None or designed.rank > walked.rank)
+            return number == 0 or (ahead and number % 4 != 1)
         best = self.pool.best
-        missed = best is None or not best.evaluation.feasible
-        far = missed and (best is None or best.evaluation.worst_margin < -_FAR or not self.problem.is_linear)
+        far = best is None or (not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR)
         begins = age == 0 and self._island % 2 == 1 and (far or bool(self.problem.improves))
         return begins or (number == 1 and far)
 
     # --- relaxed searches -------------------------------------------------------------------------------------------
 
-    def _relaxed(self, random: np.random.Generator) -> None:
+    def relaxed(self, random: np.random.Generator, *, programs: bool = True) -> None:
         """Gradient design from structured and smooth random starts, then linear programs from its best."""
         half = self._starts // 2
         structured = self._best_drawn(self.layout, random, half) * _AMPLITUDE
         latent = np.concatenate([structured, 3.0 * _AMPLITUDE * noise(self.layout, random, self._starts - half)])
         relaxed = self._gradient.run(latent, self.budget)
         order = self._add(np.stack([mended(self.layout, z) for z in relaxed]), "gradient")
-        if self._programs is not None:
-            found = [alternate(self._programs, relaxed[n], self.budget) for n in order[:_PROGRAMS]]
+        if programs and self.programs is not None:
+            found = [alternate(self.programs, relaxed[n], self.budget) for n in order[:_PROGRAMS]]
             self._add(np.stack([mended(self.layout, z) for z in found]), "linear")
 
     def _best_drawn(self, layout: Layout, random: np.random.Generator, count: int) -> Array:
@@ -174,7 +181,7 @@ class Stages:
 
     # --- local search -----------------------------------------------------------------------------------------------
 
-    def _walks(self, tabu: TabuSearch, random: np.random.Generator, fresh: int) -> None:
+    def walks(self, tabu: TabuSearch, random: np.random.Generator, fresh: int) -> None:
         """Tabu walks from fresh structured starts, or from the island's best designs disturbed or crossed."""
         layout = self._coarse
         known = [
@@ -208,7 +215,7 @@ class Stages:
         if best is not None:
             self._physics.calibrated(self.problem.overstated(*self.layout.patterns(best.z)))
 
-    def _polish(self) -> None:
+    def polish(self) -> None:
         """Moves on any problem, judged by the physics itself."""
         for candidate in self.pool.distinct(_POLISHED):
             self.pool.add(self._polisher.run(candidate.z, _POLISH_STEPS, self.budget), "polish", self._island)
@@ -235,12 +242,13 @@ class Stages:
         return Polish(self._physics)
 
     @cached_property
-    def _programs(self) -> ConditionForms | None:
+    def programs(self) -> ConditionForms | None:
         """Forms for linear programs; none where the mover is the base's own pattern, which makes them quadratic."""
         return ConditionForms(self.problem, self.layout) if self.problem.is_linear and not self.layout.linked else None
 
     @cached_property
-    def _tabu(self) -> TabuSearch | None:
+    def tabu(self) -> TabuSearch | None:
+        """Walks on the linear conditions; none where there are too few, or their table would be too large."""
         if not self.problem.has_linear_core:
             return None
         forms = ConditionForms(self.problem, self._coarse)

@@ -57,8 +57,8 @@ def _at_stand_off(problem: Problem, designs: Sequence[Design], columns: Sequence
     mx, my, kxx, kyy, kxy = problem.case(designs[0].base, designs[0].mover).pair(rows)
     stiffness = -(kxx + kyy) / 2.0 - float(np.hypot((kxx - kyy) / 2.0, kxy))
     return (
-        f" At {from_si(gaps[0], 'mm'):.3g} mm the tilt moment is {from_si(float(np.hypot(mx, my)), 'N mm'):.3g} N mm and "
-        f"the lateral stiffness {from_si(stiffness, 'N/mm'):.3g} N/mm (negative pushes off the centre)."
+        f" At {from_si(gaps[0], 'mm'):.3g} mm the tilt moment is {from_si(float(np.hypot(mx, my)), 'N mm'):.3g} N mm "
+        f"and the lateral stiffness {from_si(stiffness, 'N/mm'):.3g} N/mm (negative pushes off the centre)."
     )
 
 

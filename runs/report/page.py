@@ -33,6 +33,10 @@ _ORIGINS = {
 }  # fmt: skip
 
 
+_SAID_BELOW = ("IDEAL", "A stand-off is stable only on a guide")
+"""Warnings that stand in full below the table of requirements, for the design that is shown."""
+
+
 def render(run: Run, extras: ReportExtras, design_id: str | None = None) -> str:
     """Return the report on one design as a complete, self-contained HTML document.
 
@@ -92,8 +96,7 @@ def _head(run: Run, design: Design, extras: ReportExtras) -> str:
     if dangers:
         listed = assembly_list(dangers, values=False)
         out.append(f'<div class="note danger"><strong>Wrong assembly.</strong> {PREVENT}{listed}</div>')
-    # that the numbers are ideal is said in full below the table of requirements
-    warnings = [warning for warning in run.warnings if not warning.startswith("IDEAL")]
+    warnings = [warning for warning in run.warnings if not warning.startswith(_SAID_BELOW)]
     if warnings:
         lines = "".join(f"<li>{escape(warning)}</li>" for warning in warnings)
         out.append(f'<div class="note"><strong>To know.</strong><ul>{lines}</ul></div>')
@@ -212,7 +215,8 @@ def _others(run: Run, design: Design) -> str:
         return ""
     return (
         f"<section>\n<h2>Designs of this run</h2>\n{designs_table(run, design)}\n"
-        '<p class="small">Another one: <code>polewright report RUN --design ID</code>.</p>\n</section>'
+        '<p class="small">The worst margin is that of the bounds; a target that lies in its band does not count. '
+        "Another design: <code>polewright report RUN --design ID</code>.</p>\n</section>"
     )
 
 

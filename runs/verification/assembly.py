@@ -163,11 +163,11 @@ def _unchanged(before: Array, after: Array) -> bool:
 def _forces_in_words(rows: list[Row], nominal: Array, forces: Array) -> tuple[str, bool]:
     """What changes about the axial force, the gravest change in numbers, and whether it is dangerous."""
     largest = float(np.abs(nominal).max(initial=0.0))
-    counts = (np.abs(nominal) >= _MATTERS * largest) | (np.abs(forces) >= _MATTERS * largest)
-    flips = counts & (nominal * forces < 0.0)
+    matters = np.abs(forces) >= _MATTERS * largest
+    flips = matters & (np.abs(nominal) >= _MATTERS * largest) & (nominal * forces < 0.0)
     # a force that the spec has at zero is no measure: one that rises from below the noise is compared with it
     floor = np.maximum(np.abs(nominal), _MATTERS * largest)
-    stronger = counts & (np.abs(forces) > _STRONGER * floor) & ~flips
+    stronger = matters & (np.abs(forces) > _STRONGER * floor) & ~flips
     grave = flips | stronger
     n = int(np.argmax(np.where(grave, np.abs(forces - nominal), -1.0) if grave.any() else np.abs(forces - nominal)))
     before, after = float(nominal[n]), float(forces[n])
@@ -176,8 +176,10 @@ def _forces_in_words(rows: list[Row], nominal: Array, forces: Array) -> tuple[st
         words = f"It {_does(after)} {where} instead of {_doing(before)}."
     elif stronger[n]:
         words = f"It {_does(after)} {where} instead of {number(abs(before))} N{_times(after, before)}."
-    else:
+    elif matters[n]:
         words = f"It {_does(after)} {where} instead of {number(abs(before))} N."
+    else:
+        words = f"It neither holds nor repels {where} instead of {_doing(before)}."
     return words, bool(grave.any())
 
 

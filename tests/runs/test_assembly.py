@@ -125,3 +125,13 @@ def test_a_spec_without_poses_is_looked_at_where_its_cells_suit() -> None:
     found = ways(spec_of(require("pole_count", "at_most = 9")), a, a)
     labels = [row["label"] for row in found["mover turned by 180 deg"]["values"]]
     assert labels == ["axial force at 0.3 mm", "axial force at 1 mm", "axial force at 3 mm", "pole_count of both parts"]
+
+
+def test_a_force_that_vanishes_has_no_sign_to_warn_of() -> None:
+    """Crossed stripes neither hold nor repel but for rounding."""
+    a = stripes((8, 8), 2)
+    found = ways(spec_of(HOLD, "[8.0, 8.0]"), a, a)
+    for turned in (found["mover turned by 90 deg"], found["mover turned by 270 deg"]):
+        assert turned["text"].startswith("It neither holds nor repels at 0.3 mm instead of holding ")
+        assert not turned["dangerous"]
+        assert turned["changes"]

@@ -108,11 +108,12 @@ def test_a_harmless_pair_is_told_apart_from_one_that_fits_any_way() -> None:
         ("field_reach", {"of": "mover"}, "field_reach of the mover down to 0.5 mT"),
         ("net_moment", {}, "net_moment of both parts"),
         ("slide_force", {"gap_mm": 0.2, "travel_mm": 3.0}, "slide_force at 0.2 mm gap over 3 mm along x"),
-        ("peak_force", {"which": "repulsion", "between_mm": [0.1, 6.0]}, "peak_force in repulsion between 0.1 and 6 mm"),
+        ("peak_force", {"which": "repulsion", "between_mm": [0.1, 6.0]},
+         "peak_force in repulsion between 0.1 and 6 mm"),
         ("field_at", {"of": "base", "point_mm": [[0, 0, 5], [1, 0, 5]], "component": "z"},
          "field_at of the base at (0,0,5), (1,0,5) mm along z"),
     ],
 )  # fmt: skip
-def test_labels_read_and_merge(quantity: str, keys: dict[str, object], label: str) -> None:
+def test_labels_read_and_merge(quantity: str, keys: dict[str, Any], label: str) -> None:
     columns = columns_of(spec_of(require(quantity, **keys)))
     assert merged_label([column.label for column in columns]) == label
