@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from functools import lru_cache
 from typing import final
 
 import numpy as np
 from numpy.typing import NDArray
 
-from ..models.pair import Row, pair_values
+from ..models.pair import PairForms, Row, pair_forms, pair_values
 from ..models.part import Part
 from ..models.stray import Placed
 from .plan import Response
@@ -17,6 +18,17 @@ from .sites import Source, seats
 Array = NDArray[np.float64]
 Measure = Callable[[Sequence[Row]], Array]
 """Values of pair rows [SI], shape (row,)."""
+
+
+_CURVE = 8
+"""From this many rows on, the tables are kept: the next design will be asked for the same curve."""
+_KEPT = 4_000_000
+"""Largest number of entries of tables that are kept."""
+
+
+@lru_cache(maxsize=8)
+def _curve_forms(base: Part, mover: Part, rows: tuple[Row, ...]) -> PairForms:
+    return pair_forms(base, mover, rows)
 
 
 @final
@@ -40,7 +52,10 @@ class Case:
         """Exact values of pair rows at any poses [SI], shape (row,)."""
         if self.measure is not None:
             return self.measure(rows)
-        return pair_values(self.base, self.mover, self.response.base, self.response.mover, rows)
+        a, b = self.response.base, self.response.mover
+        if len(rows) < _CURVE or len(rows) * 4 * max(a.size, b.size) > _KEPT:
+            return pair_values(self.base, self.mover, a, b, rows)
+        return _curve_forms(self.base, self.mover, tuple(rows)).values(a, b)
 
     def axial_force(self, gaps: Array) -> Array:
         """F_z on the mover [N] at centred poses, shape of ``gaps`` [m]."""

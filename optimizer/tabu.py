@@ -114,11 +114,19 @@ class TabuSearch:
         values = np.stack([self.forms.values(z) for z in starts])
         slopes = np.stack([self.forms.slopes(z) for z in starts])
         price = (jnp.asarray(softness), jnp.asarray(violation))
-        best = jax.vmap(self._score)(jnp.asarray(values), *price)
-        top = jax.vmap(self._true_score)(jnp.asarray(values), price[1])
+        best, top = self._scored(jnp.asarray(values), *price)
         free = jnp.zeros(starts.shape, dtype=jnp.int64)
         z = jnp.asarray(starts)
         return _Walk(z, jnp.asarray(values), jnp.asarray(slopes), free, best, top, z), price
+
+    @cached_property
+    def _scored(self) -> Callable[..., tuple[jax.Array, jax.Array]]:
+        """Soft and true score of many starts, compiled."""
+
+        def both(values: jax.Array, softness: jax.Array, violation: jax.Array) -> tuple[jax.Array, jax.Array]:
+            return self._score(values, softness, violation), self._true_score(values, violation)
+
+        return jax.jit(jax.vmap(both))
 
     def _true_score(self, values: jax.Array, violation: jax.Array) -> Any:
         """Score of forms (form,) with the true minimum."""

@@ -28,7 +28,8 @@ table.requirements td,table.requirements th{padding-left:1.2mm;padding-right:1.2
 table.requirements td{border-top-color:transparent}
 table.requirements tr.first td{border-top-color:#bbb;padding-bottom:0}
 table.requirements td.small{padding-left:4mm;white-space:nowrap}
-td.number,th.number{text-align:right;white-space:nowrap;font-variant-numeric:tabular-nums}
+th.number{text-align:right}
+td.number{text-align:right;white-space:nowrap;font-variant-numeric:tabular-nums}
 tr{break-inside:avoid}
 .yes{color:#1d4a52;font-weight:600;white-space:nowrap}
 .no{color:#8a1f11;font-weight:700;white-space:nowrap}

@@ -60,8 +60,8 @@ def _peak(
     words = "the peak"
     checks = [
         Check(f"{entry.label}: at the peak", entry.unit, gap, reported, there, max(reported, 1e-12), words),
-        Check(f"{entry.label}: random places", entry.unit, gap, reported, elsewhere, max(reported, 1e-12), words,
-              ceiling=True),
+        Check(f"{entry.label}: largest of random places", entry.unit, gap, reported, elsewhere, max(reported, 1e-12),
+              words, ceiling=True),
     ]  # fmt: skip
     return checks, np.array([max(there, elsewhere)])
 
@@ -75,7 +75,7 @@ def _reach(
     surface = state.surface(of, gap or 0.0, "around", distance)
     elsewhere = _largest(sources, surface, seed)
     checks = [
-        Check(f"{entry.label}: random places at the reach", "mT", gap, level, elsewhere, level, "the level",
+        Check(f"{entry.label}: largest of random places there", "mT", gap, level, elsewhere, level, "the level",
               _REACH_TOLERANCE, ceiling=True)
     ]  # fmt: skip
     top = elsewhere
