@@ -36,8 +36,8 @@ _SPREAD = 2.0
 """Mean rank of the designs that walks start from."""
 _CROSSED = 4
 """One start in as many is a design with a window of another one."""
-_JUDGED = STARTS
-"""Designs of a stage that are judged exactly, best first by the search's own score."""
+_JUDGED, _JUDGED_SLOWLY = STARTS, 5
+"""Designs of a stage that are judged exactly, best first by the search's own score: where rows suffice, or not."""
 _POLISHED = 3
 _POLISH_STEPS = 150
 _REFINED = 2
@@ -175,7 +175,7 @@ class Stages:
     def _add(self, z: Array, origin: str) -> NDArray[np.intp]:
         """Judge the best of many rounded variables exactly; returns the order of all by the search's score."""
         order = np.argsort(-self._scores(self.layout, z), kind="stable")
-        for n in order[:_JUDGED]:
+        for n in order[: _JUDGED if self.problem.judged_by_rows else _JUDGED_SLOWLY]:
             self.pool.add(z[n], origin, self._island)
         return order
 

@@ -11,6 +11,8 @@ from ..models.units import from_si
 from .records import Column, Design, Run
 
 Kind = Literal["at_least", "at_most", "equal_to", "improve"]
+_NOISE = 1e-9
+"""What cancels exactly on paper leaves less than this in any unit of the specs."""
 _SIGNS = {"at_least": "≥", "at_most": "≤"}
 
 
@@ -78,9 +80,11 @@ def find_design(run: Run, design_id: str | None) -> Design:
 
 
 def number(value: float) -> str:
-    """Return a value for people: four significant digits, "none" where it does not exist."""
+    """Return a value for people: four significant digits, "none" where it does not exist, 0 for rounding noise."""
     if math.isnan(value):
         return "none"
+    if abs(value) < _NOISE:
+        return "0"
     if value != 0.0 and abs(value) < 1e-4:
         return f"{value:.3g}"
     return f"{value:.4g}" if abs(value) < 9999.5 else f"{value:.0f}"

@@ -11,6 +11,7 @@ from ..models.part import Part
 from ..models.units import from_si
 from ..objectives.problem import Problem
 from ..optimizer.stopping import StopReason
+from .judged import number
 from .records import Column, Design
 from .resolve import columns_of
 from .spec import PartSpec, Spec
@@ -41,8 +42,9 @@ def warnings_of(spec: Spec, problem: Problem, designs: Sequence[Design], reason:
         )
     if spec.conditions.lateral == "free":
         found.append("The mover is free sideways: ask for lateral_stiffness, or it may slide off the pose judged here.")
-    found += _of_part("base", problem.base, spec.base)
-    found += _of_part("mover", problem.mover, spec.mover)
+    of_base, of_mover = _of_part(problem.base, spec.base), _of_part(problem.mover, spec.mover)
+    found += [f"{'base and mover' if text in of_mover else 'base'}: {text}" for text in of_base]
+    found += [f"mover: {text}" for text in of_mover if text not in of_base]
     if any(np.isnan(design.values).any() for design in designs[:1]):
         found.append("A value that does not exist (no stand-off, no peak) counts as a missed requirement.")
     return tuple(found)
@@ -56,26 +58,26 @@ def _at_stand_off(problem: Problem, designs: Sequence[Design], columns: Sequence
     rows: list[Row] = [Row(component, gaps[0]) for component in ("mx", "my", "kxx", "kyy", "kxy")]
     mx, my, kxx, kyy, kxy = problem.case(designs[0].base, designs[0].mover).pair(rows)
     stiffness = -(kxx + kyy) / 2.0 - float(np.hypot((kxx - kyy) / 2.0, kxy))
+    tilt = from_si(float(np.hypot(mx, my)), "N mm")
     return (
-        f" At {from_si(gaps[0], 'mm'):.3g} mm the tilt moment is {from_si(float(np.hypot(mx, my)), 'N mm'):.3g} N mm "
-        f"and the lateral stiffness {from_si(stiffness, 'N/mm'):.3g} N/mm (negative pushes off the centre)."
+        f" At {number(from_si(gaps[0], 'mm'))} mm the tilt moment is {number(tilt)} N mm and the lateral stiffness {number(from_si(stiffness, 'N/mm'))} N/mm (negative pushes off the centre)."
     )
 
 
-def _of_part(name: str, part: Part, spec: PartSpec) -> list[str]:
+def _of_part(part: Part, spec: PartSpec) -> list[str]:
     """What one part's blank and material call for."""
     found = []
     rim = [from_si(width, "mm") for width in part.rim]
     if max(part.rim) > _RIM and spec.shape == "rectangle":
-        found.append(f"{name}: {rim[0]:.3g} mm in x and {rim[1]:.3g} mm in y beyond whole cells stay unmagnetized.")
+        found.append(f"{rim[0]:.3g} mm in x and {rim[1]:.3g} mm in y beyond whole cells stay unmagnetized.")
     if spec.material.from_memory:
-        found.append(f"{name}: the numbers of {spec.material.name} are from memory; check them with your supplier.")
+        found.append(f"the numbers of {spec.material.name} are from memory; check them with your supplier.")
     width = from_si(np.ceil(spec.pole_width_min_mm / spec.cell_mm - 1e-9) * part.cell, "mm")
     if spec.pattern == "free" and width > spec.pole_width_min_mm * (1.0 + 1e-9):
-        found.append(f"{name}: poles are whole cells wide: {spec.pole_width_min_mm:g} mm becomes {width:g} mm.")
+        found.append(f"poles are whole cells wide: {spec.pole_width_min_mm:g} mm becomes {width:g} mm.")
     if spec.material.recoil_permeability > 1.0:
         found.append(
-            f"{name}: recoil permeability {spec.material.recoil_permeability:g} is stored but not modelled yet: the "
+            f"recoil permeability {spec.material.recoil_permeability:g} is stored but not modelled yet: the "
             "magnet is taken as rigid."
         )
     return found

@@ -19,7 +19,7 @@ def command(as_json: bool) -> int:
     from ..examples import example_text
     from ..execute import design
     from ..output import put_in_place
-    from ..progress import shown
+    from ..progress import shown, steps
     from ..report.collect import collect_extras
     from ..report.page import render
     from ..result import EXIT_CODES, result_json, status_of
@@ -34,7 +34,8 @@ def command(as_json: bool) -> int:
     with shown(console, quiet=as_json) as watch:
         run = design(spec, output=archive, watch=watch)
     if run.complete:
-        run = verify(run)
+        with steps(console, quiet=as_json) as steps_watch:
+            run = verify(run, watch=steps_watch)
         write_run(run, archive)
         best = run.designs[0]
         put_in_place(page, render(run, collect_extras(run, best), best.id).encode("utf-8"))
