@@ -60,7 +60,8 @@ def _at_stand_off(problem: Problem, designs: Sequence[Design], columns: Sequence
     stiffness = -(kxx + kyy) / 2.0 - float(np.hypot((kxx - kyy) / 2.0, kxy))
     tilt = from_si(float(np.hypot(mx, my)), "N mm")
     return (
-        f" At {number(from_si(gaps[0], 'mm'))} mm the tilt moment is {number(tilt)} N mm and the lateral stiffness {number(from_si(stiffness, 'N/mm'))} N/mm (negative pushes off the centre)."
+        f" At {number(from_si(gaps[0], 'mm'))} mm the tilt moment is {number(tilt)} N mm and the lateral "
+        f"stiffness {number(from_si(stiffness, 'N/mm'))} N/mm (negative pushes off the centre)."
     )
 
 
