@@ -26,13 +26,8 @@ MU0 = 4e-7 * np.pi
 """Vacuum permeability [T m/A] (its value before 2019, which every reference here uses)."""
 
 Component = Literal["energy", "fx", "fy", "fz", "kxx", "kyy", "kxy", "kzz", "mx", "my", "mz"]
+"""Energy [J], force [N], derivative of the force [N/m] (kzz = dF_z/dgap, kxy = dF_x/dy), moment [N m]."""
 Weight = Literal["1", "x", "y"]
-
-SI_UNITS: dict[str, str] = {
-    "energy": "J", "fx": "N", "fy": "N", "fz": "N", "kxx": "N/m", "kyy": "N/m", "kxy": "N/m", "kzz": "N/m",
-    "mx": "N m", "my": "N m", "mz": "N m",
-}  # fmt: skip
-"""Unit of each component; k** are derivatives of the force: kzz = dF_z/dgap, kxy = dF_x/dy."""
 
 _PLAIN: dict[str, str] = {
     "energy": "e", "fx": "x", "fy": "y", "fz": "z", "kxx": "xx", "kyy": "yy", "kxy": "xy", "kzz": "zz",

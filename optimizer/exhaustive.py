@@ -18,6 +18,8 @@ Array = NDArray[np.float64]
 _CHUNK = 4096
 _SLOW = 2048
 """Pattern pairs that may be judged one by one where rows alone do not judge a design."""
+_DENSE = 20_000_000
+"""Largest number of entries of rows as full matrices; beyond it pairs are judged one by one."""
 KEEP = 64
 """How many of the best pairs are returned."""
 
@@ -31,13 +33,13 @@ def fits(problem: Problem, layout: Layout, budget: Budget) -> bool:
     """Can every pattern pair be looked at within the budget?"""
     if layout.count > 40:
         return False
-    return pairs(problem, layout) <= min(budget.left, budget.left if problem.judged_by_rows else _SLOW)
+    return pairs(problem, layout) <= (budget.left if _by_rows(problem) else min(budget.left, _SLOW))
 
 
 def best(problem: Problem, layout: Layout, budget: Budget) -> tuple[Array, bool]:
     """The best variables of all (m, n), best first, and whether none was left out."""
     kept, keys = np.zeros((0, layout.count)), np.zeros((0, 2))
-    dense = _dense(problem) if problem.judged_by_rows else None
+    dense = _dense(problem) if _by_rows(problem) else None
     for z in _all(layout.count, pairs(problem, layout)):
         if budget.reason() is not None:
             return kept, False
@@ -50,6 +52,12 @@ def best(problem: Problem, layout: Layout, budget: Budget) -> tuple[Array, bool]
         order = np.lexsort((-keys[:, 1], -keys[:, 0]))[:KEEP]
         kept, keys = kept[order], keys[order]
     return kept, True
+
+
+def _by_rows(problem: Problem) -> bool:
+    """Can rows alone judge many pairs at once?"""
+    entries = problem.base.mask.size * problem.mover.mask.size * problem.forms.count
+    return problem.judged_by_rows and entries <= _DENSE
 
 
 def _halved(problem: Problem, layout: Layout) -> bool:

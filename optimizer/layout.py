@@ -127,8 +127,8 @@ class Layout:
         return np.unique(np.stack([self.base.index[met], above[met]], axis=1), axis=0)
 
     def coarse(self) -> Layout:
-        """The same with cells tied together in blocks as wide as the pole width; itself where that is one cell."""
-        if max(self.brushes) == 1:
+        """The same with cells tied together in blocks as wide as the pole width; itself where that changes nothing."""
+        if max(self.brushes) == 1 or self.count == 0:
             return self
         faces = (self.base, self.mover)
         labels = np.arange(self.count)

@@ -29,7 +29,7 @@ Array = NDArray[np.float64]
 
 _DRAWN = 800
 """Structured starts drawn and judged for each set that is used."""
-_FIRST_WALK, _WALK = 1000, 750
+_WALK = 1000
 _SOFTNESS = np.geomspace(0.04, 0.08, STARTS)
 _PARENTS = 8
 _SPREAD = 2.0
@@ -169,7 +169,12 @@ class Stages:
         self.budget.spend(min(len(z), self.budget.left))
         if layout is not self.layout:
             z = np.stack([self._fine(one) for one in z])
-        conditions, worth = self._physics.judge_many(z)
+        if self._forms is not None:
+            # a design costs less here than compiling the batched physics
+            values = np.stack([self._forms.values(one) for one in z])
+            conditions, worth = values[:, : self.problem.counts.size], values[:, -1]
+        else:
+            conditions, worth = self._physics.judge_many(z)
         return np.asarray(score(np, self.problem.counts, conditions, worth if self.problem.improves else None))
 
     def _add(self, z: Array, origin: str) -> NDArray[np.intp]:
@@ -198,13 +203,12 @@ class Stages:
             other = -other if self.problem.reverses and (other == z).mean() < 0.5 else other
             starts.append(crossed(layout, z, other, random))
         violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
-        steps = _FIRST_WALK if fresh else _WALK
-        found = tabu.run(np.stack(starts), random, self.budget, steps, _SOFTNESS, violation)
+        found = tabu.run(np.stack(starts), random, self.budget, _WALK, _SOFTNESS, violation)
         self._add(np.stack([self._fine(z) for z in found]), "search")
 
     def _refine(self, random: np.random.Generator) -> None:
-        """Moves of whole windows on the fine lattice, keeping the pole width."""
-        if self._local is None or max(self.layout.brushes) == 1:
+        """Moves of whole windows on the fine lattice, keeping the pole width; flips where no walk is affordable."""
+        if self._local is None or (max(self.layout.brushes) == 1 and self.tabu is not None):
             return
         for candidate in self.pool.distinct(_REFINED):
             self.pool.add(self._local.run(candidate.z, random, _LOCAL_STEPS, self.budget), "polish", self._island)
@@ -234,6 +238,11 @@ class Stages:
         return Relaxed(self.problem, self.layout)
 
     @cached_property
+    def _forms(self) -> ConditionForms | None:
+        """Everything that is asked as forms, where all of it is linear."""
+        return ConditionForms(self.problem, self.layout) if self.problem.is_linear else None
+
+    @cached_property
     def _gradient(self) -> GradientDesign:
         return GradientDesign(self._physics)
 
@@ -244,16 +253,17 @@ class Stages:
     @cached_property
     def programs(self) -> ConditionForms | None:
         """Forms for linear programs; none where the mover is the base's own pattern, which makes them quadratic."""
-        return ConditionForms(self.problem, self.layout) if self.problem.is_linear and not self.layout.linked else None
+        return None if self.layout.linked else self._forms
 
     @cached_property
     def tabu(self) -> TabuSearch | None:
         """Walks on the linear conditions; none where there are too few, or their table would be too large."""
         if not self.problem.has_linear_core:
             return None
-        forms = ConditionForms(self.problem, self._coarse)
+        forms = self._forms if self._coarse is self.layout else None
+        forms = forms or ConditionForms(self.problem, self._coarse)
         return TabuSearch(forms) if affordable(forms) else None
 
     @cached_property
     def _local(self) -> LocalSearch | None:
-        return LocalSearch(ConditionForms(self.problem, self.layout)) if self.problem.is_linear else None
+        return None if self._forms is None else LocalSearch(self._forms)

@@ -25,11 +25,20 @@ _RANGE = 10e-3
 def curves_of(spec: Spec, problem: Problem, designs: Sequence[Design]) -> dict[str, Curve]:
     """Return the curves by name; abscissas hold every gap that the spec names."""
     found = {"force_gap": _force_gap(spec, problem, designs)}
-    asked = [e for e in (*spec.require, *spec.improve) if e.quantity in ("slide_force", "lateral_force")]
-    if asked:
-        gap = to_si(float(np.atleast_1d(asked[0].settings["gap_mm"])[0]), "mm")
-        found["lateral"] = _lateral(problem, designs, gap, *_direction(asked))
+    if _asks_lateral(spec):
+        found["lateral"] = _lateral(problem, designs, *lateral_path(spec))
     return found
+
+
+def lateral_path(spec: Spec) -> tuple[float, float, Array]:
+    """Gap [m], largest offset [m] and unit direction (x, y) of the lateral curve of a spec that asks for one."""
+    asked = _asks_lateral(spec)
+    gap = to_si(float(np.atleast_1d(asked[0].settings["gap_mm"])[0]), "mm")
+    return gap, *_direction(asked)
+
+
+def _asks_lateral(spec: Spec) -> list[Entry]:
+    return [e for e in (*spec.require, *spec.improve) if e.quantity in ("slide_force", "lateral_force")]
 
 
 def _force_gap(spec: Spec, problem: Problem, designs: Sequence[Design]) -> Curve:

@@ -15,10 +15,13 @@ from .. import __version__
 from ..models.errors import InputError
 from ..models.part import Part
 from ..models.units import from_si
+from .curves import lateral_path
 from .judged import bound_text, judge, numbers, percent
 from .output import put_in_place
 from .records import Curve, Design, Run
 from .report.cautions import FRAME, GUIDE, IDEAL, caution_lines
+from .report.faces import size_words
+from .spec import spec_from_json
 
 _FACES = {
     "base": (
@@ -85,7 +88,8 @@ def _pattern(run: Run, design: Design, name: str, part: Part, pattern: NDArray[n
         "frame: that of the base in the assembled pair; its origin is the centre of the blank's bounding box",
         f"cells: {nx} along x (fields of a line), {ny} along y (lines), {cell:.6g} mm square; the first value is the "
         f"cell centred at x = {x:.6g} mm, y = {y:.6g} mm",
-        f"blank: {_size(part)} mm, unmagnetized rim {rim_x:.6g} mm in x and {rim_y:.6g} mm in y (both sides together)",
+        f"blank: {size_words(part.blank)}, unmagnetized rim {rim_x:.6g} mm in x and {rim_y:.6g} mm in y (both sides "
+        "together)",
         f"thickness: {from_si(part.thickness, 'mm'):.6g} mm without coating; coating {from_si(part.coating, 'um'):.6g} "
         f"um; remanence {part.remanence:.6g} T",
         IDEAL,
@@ -110,7 +114,7 @@ def _readme(run: Run, design: Design, names: list[str]) -> str:
     lines = [title, "=" * len(title), ""]
     lines += _wrapped(f"Design {design.id} ({design.origin}), {_verdict(design)}")
     lines += _wrapped(f"polewright {__version__}, spec sha256 {run.spec_sha256}, seed {run.seed}.")
-    lines += ["", "Files", "-----", *(f"{name:<16}{_purpose(name)}" for name in names)]
+    lines += ["", "Files", "-----", *(f"{name:<16}{_purpose(run, name)}" for name in names)]
     lines += ["", "Orientation", "-----------", *_wrapped(FRAME)]
     lines += _wrapped(
         "The mover's file is in the same frame, so equal places of the two files lie over each other in the pair. To "
@@ -139,19 +143,18 @@ def _verdict(design: Design) -> str:
     return "meets every requirement." if design.feasible else "MISSES a requirement."
 
 
-def _purpose(name: str) -> str:
+def _purpose(run: Run, name: str) -> str:
     if name in ("base.csv", "mover.csv"):
         return "pole pattern; reads back as the pattern file of a spec"
-    return "curve, units in its first line"
+    if name == "force_gap.csv":
+        return "axial force over the gap, mover centred"
+    gap, _, along = lateral_path(spec_from_json(run.spec_json))
+    way = ", ".join(f"{part:.3g}" for part in along)
+    return f"restoring force over the offset along ({way}) at {from_si(gap, 'mm'):g} mm gap, positive to the centre"
 
 
 def _unit_word(unit: str) -> str:
     return unit.replace("/", "_per_").replace("%", "percent").replace(" ", "_")
-
-
-def _size(part: Part) -> str:
-    xmin, xmax, ymin, ymax = part.blank.bounds
-    return f"{type(part.blank).__name__.lower()} {from_si(xmax - xmin, 'mm'):.6g} x {from_si(ymax - ymin, 'mm'):.6g}"
 
 
 def _one_line(text: str) -> str:

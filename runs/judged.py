@@ -75,7 +75,7 @@ def find_design(run: Run, design_id: str | None) -> Design:
     if design_id is None:
         return run.designs[0]
     if design_id not in known:
-        raise InputError(f"no design {design_id!r} in this run; it holds {', '.join(known)}")
+        raise InputError(f"no design {design_id!r} in this run; give one of {', '.join(known)}")
     return run.designs[known.index(design_id)]
 
 

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from ..models.making import narrowest_pole
 from ..models.pair import Row
 from ..models.part import Part
 from ..models.units import from_si
@@ -14,7 +15,7 @@ from ..optimizer.stopping import StopReason
 from .judged import number
 from .records import Column, Design
 from .resolve import columns_of
-from .spec import PartSpec, Spec
+from .spec import CellFile, PartSpec, Spec
 
 _RIM = 1e-9
 
@@ -22,7 +23,7 @@ _RIM = 1e-9
 def warnings_of(spec: Spec, problem: Problem, designs: Sequence[Design], reason: StopReason) -> tuple[str, ...]:
     """Return what the spec and its outcome call for, most important first."""
     found = ["IDEAL: sharp pole edges and full magnetization depth are assumed; a real part is weaker at its edges."]
-    if designs and not designs[0].feasible:
+    if designs and not designs[0].feasible and reason is not StopReason.GIVEN:
         found.append(
             "No pattern pair on these cells meets every requirement: all were looked at."
             if reason is StopReason.PROVEN
@@ -76,6 +77,13 @@ def _of_part(part: Part, spec: PartSpec) -> list[str]:
     width = from_si(np.ceil(spec.pole_width_min_mm / spec.cell_mm - 1e-9) * part.cell, "mm")
     if spec.pattern == "free" and width > spec.pole_width_min_mm * (1.0 + 1e-9):
         found.append(f"poles are whole cells wide: {spec.pole_width_min_mm:g} mm becomes {width:g} mm.")
+    if isinstance(spec.pattern, CellFile):
+        narrowest = from_si(narrowest_pole(spec.pattern.values, part.mask, part.cell), "mm")
+        if narrowest < spec.pole_width_min_mm * (1.0 - 1e-9):
+            found.append(
+                f"the given pattern has poles of {number(narrowest)} mm, narrower than the "
+                f"{spec.pole_width_min_mm:g} mm of pole_width_min_mm."
+            )
     if spec.material.recoil_permeability > 1.0:
         found.append(
             f"recoil permeability {spec.material.recoil_permeability:g} is stored but not modelled yet: the "

@@ -101,7 +101,8 @@ def _print_checked(spec: Spec) -> None:
             f"{name}: the numbers of {part['material']} are from memory, not read in the standard"
             for name, part in parts.items()
             if part["from_memory"]
-        ],
+        ]
+        + _notes(spec),
     )
 
 
@@ -137,4 +138,10 @@ def _summary(spec: Spec) -> list[str]:
     for kind, entries in (("required", spec.require), ("improved", spec.improve)):
         if entries:
             lines.append(f"{kind}: {', '.join(entry.quantity for entry in entries)}")
-    return lines
+    return lines + [f"note: {note}" for note in _notes(spec)]
+
+
+def _notes(spec: Spec) -> list[str]:
+    """What a valid spec still has against it."""
+    many = len(spec.improve)
+    return [f"polewright design takes at most one improve, this spec has {many}"] if many > 1 else []

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from ...models.blank import Blank, Disc, Rectangle, Ring
 from ...models.part import Part
 from ...models.units import from_si
 from ..judged import number
@@ -53,11 +54,9 @@ def _figure(face: Face, drawing: Drawing) -> str:
 
 
 def _facts(part: Part, pattern: NDArray[np.int8]) -> str:
-    xmin, xmax, ymin, ymax = part.blank.bounds
     ny, nx = part.shape
-    size = f"{number(from_si(xmax - xmin, 'mm'))} x {number(from_si(ymax - ymin, 'mm'))} mm"
-    facts = f"{size}, {number(from_si(part.thickness, 'mm'))} mm thick, {nx} x {ny} cells of "
-    facts += f"{number(from_si(part.cell, 'mm'))} mm, remanence {number(part.remanence)} T"
+    facts = f"{size_words(part.blank).capitalize()}, {number(from_si(part.thickness, 'mm'))} mm thick, "
+    facts += f"{nx} x {ny} cells of {number(from_si(part.cell, 'mm'))} mm, remanence {number(part.remanence)} T"
     if part.coating > 0.0:
         facts += f", coating {number(from_si(part.coating, 'um'))} µm"
     rim = max(part.rim)
@@ -66,3 +65,19 @@ def _facts(part: Part, pattern: NDArray[np.int8]) -> str:
         facts += f", unmagnetized rim {x} mm along x and {y} mm along y, both sides together"
     plus, minus = int((pattern == 1).sum()), int((pattern == -1).sum())
     return f"{facts}. {plus} cells along +z, {minus} along -z."
+
+
+def size_words(blank: Blank) -> str:
+    """Return the shape of a blank and the dimensions that a drawing would give."""
+
+    def mm(length: float) -> str:
+        return number(from_si(length, "mm"))
+
+    match blank:
+        case Disc():
+            return f"disc of {mm(blank.diameter)} mm diameter"
+        case Ring():
+            return f"ring of {mm(blank.outer)} mm outer and {mm(blank.inner)} mm inner diameter"
+    xmin, xmax, ymin, ymax = blank.bounds
+    name = "rectangle of" if isinstance(blank, Rectangle) else "polygon within"
+    return f"{name} {mm(xmax - xmin)} x {mm(ymax - ymin)} mm"

@@ -159,9 +159,12 @@ def _intervals(entry: Require) -> Iterator[tuple[Pose, float, float]]:
 
 
 def _contradiction(entry: Require, pose: Pose, floor: tuple[float, str], ceiling: tuple[float, str]) -> str:
+    """Say it in the sign of ``entry``, where the contradiction shows."""
     where = ", ".join(f"{key} = {show(value)}" for key, value in pose[1])
     unit = entry.info.unit
+    if entry.quantity in _MIRRORED:
+        floor, ceiling = (0.0 - ceiling[0], ceiling[1]), (0.0 - floor[0], floor[1])
     return (
-        f"contradictory bounds: {pose[0]} at {where} must be at least {floor[0]:g} {unit} by {floor[1]} "
+        f"contradictory bounds: {entry.quantity} at {where} must be at least {floor[0]:g} {unit} by {floor[1]} "
         f"and at most {ceiling[0]:g} {unit} by {ceiling[1]}; relax one of them"
     )

@@ -104,11 +104,6 @@ def is_listed(key: Key, value: Any) -> bool:
     return _LIST_KINDS[key.kind] == 0 or any(isinstance(item, list | tuple) for item in value)
 
 
-def may_be_listed(key: Key) -> bool:
-    """Tell whether a key may be a list of poses."""
-    return key.kind in _LIST_KINDS
-
-
 def _number(key: Key) -> Any:
     limits: dict[str, Any] = {"le": LARGEST}
     if key.positive:

@@ -64,6 +64,8 @@ def read_text(path: Path) -> str:
         raise InputError(f"cannot be read: {reason}") from None
     if len(data) > LARGEST_FILE:
         raise InputError(f"is larger than {LARGEST_FILE // 1_000_000} MB: not a file of this kind")
+    if data.startswith(b"\x89HDF"):
+        raise InputError("is an HDF5 file, perhaps a run; a text file is needed here")
     try:
         return data.decode("utf-8")
     except UnicodeDecodeError as error:
@@ -112,7 +114,8 @@ def _row(line: str, free_allowed: bool, where: str) -> Row:
             row.append(_VALUES[word])
         else:
             allowed = "-1, 0, 1 or empty (free)" if free_allowed else "-1, 0 or 1"
-            raise InputError(f'{where}: field {position} must be {allowed}, received "{word[:20]}"')
+            hint = "; separate fields by commas" if any(sign in word for sign in "; \t") else ""
+            raise InputError(f'{where}: field {position} must be {allowed}, received "{word[:20]}"{hint}')
     return tuple(row)
 
 

@@ -97,8 +97,12 @@ def _issue(error: ErrorDetails, data: Mapping[str, Any]) -> Issue:
         return _wrong_branch(where, received)
     if kind == "extra_forbidden":
         return Issue(_unknown_key(where, data), dotted(where))
+    if kind == "missing" and isinstance(where[-1], int):
+        return Issue(f"must be {_form(where)}, received {show(received)}", dotted(where[:-1]))
     if kind == "missing":
         return Issue(_missing_key(where), dotted(where))
+    if where in (("require",), ("improve",)) and isinstance(received, dict):
+        return Issue(f"must be a list of tables, received one table; write [[{where[0]}]], not [{where[0]}]", where[0])
     return Issue(_message(error) + f", received {show(received)}" * (kind != "polewright"), dotted(where))
 
 
@@ -175,6 +179,13 @@ def _wrong_branch(where: Location, received: Any) -> Issue:
     found = received[key]
     hint = suggest(found, known) if isinstance(found, str) else "valid here: " + ", ".join(known)
     return Issue(f"unknown {key}, received {show(found)}; {hint}", path)
+
+
+def _form(where: Location) -> str:
+    """The form of a list of fixed length, of which one item has the location ``where``."""
+    key = next(str(item) for item in reversed(where) if isinstance(item, str))
+    numbers = {"between_mm": "two numbers [from, to]", "point_mm": "three numbers [x, y, z]"}
+    return numbers.get(key, "two numbers [x, y]")
 
 
 def _missing_key(where: Location) -> str:

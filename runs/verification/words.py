@@ -63,7 +63,7 @@ def accuracy(rows: Sequence[Record]) -> list[str]:
         elif method.startswith("exact"):
             found.append(f"Figures{whose} come from {method}: the interpolation was off by {size} of the band.")
         else:
-            found.append(f"Figures{whose}: {method}.")
+            found.append(f"{_listed([str(row['label']) for row in members])}: {method}.")
     return found
 
 

@@ -123,6 +123,7 @@ CASES: dict[str, tuple[str, str, str, tuple[str, ...]]] = {
     "bound list without a list": ("gap_mm = [3.0, 4.0, 5.0]\n" + BOUND, "gap_mm = 3\nat_least = [1]\n",
         "require.1.at_least", ("one number",)),
     "empty list": ("gap_mm = [3.0, 4.0, 5.0]", "gap_mm = []", "require.1.gap_mm", ("at least 1",)),
+    "one number for a size": ("size_mm = [20.0, 20.0]", "size_mm = [20.0]", "base.size_mm", ("two numbers", "[20]")),
     "no bound": (BOUND, "", "require.1", ("exactly one", "none")),
     "two bounds": (BOUND, BOUND + "at_most = 2\n", "require.1", ("exactly one", "at_most")),
     "equality without a band": (BOUND, "equal_to = 2\n", "require.1", ("within",)),
@@ -138,7 +139,7 @@ CASES: dict[str, tuple[str, str, str, tuple[str, ...]]] = {
     "contradiction of two": ("[search]", ANOTHER.format("axial_force", "gap_mm = 4\nat_most = 0.5"), "require.3",
                              ("gap_mm = 4", "at least 1", "require.1 (line 26)", "at most 0.5", "require.3 (line 45)")),
     "contradiction of mirrored": ("[search]", ANOTHER.format("holding_force", "gap_mm = 5\nat_least = 0"),
-                                  "require.3", ("axial_force", "gap_mm = 5", "at most 0")),
+                                  "require.3", ("holding_force", "gap_mm = 5", "at least 0")),
     "contradiction of equalities": ("[search]", ANOTHER.format("axial_force", "gap_mm = 4\nequal_to = 0\nwithin = 0.5"),
                                     "require.3", ("at most 0.5",)),
     "temperature list": ("temperature_C = 20.0", "temperature_C = [20, 60]", "conditions.temperature_C", ("number",)),
@@ -215,7 +216,7 @@ def test_material_tables(name: str, folder: Path, capsys: pytest.CaptureFixture[
         ("inner_mm = 6.0", "inner_mm = 24.0", "base.inner_mm", "outer_mm"),
         ("inner_mm = 6.0", "inner_mm = 23.9", "base.cell_mm", "no cell"),
         ("between_mm = [0.5, 8.0]", "between_mm = [8.0, 0.5]", "require.1.between_mm", "rising"),
-        ("between_mm = [0.5, 8.0]", "between_mm = [0.5]", "require.1.between_mm.1", "required"),
+        ("between_mm = [0.5, 8.0]", "between_mm = [0.5]", "require.1.between_mm", "two numbers [from, to]"),
         ("at_least = 1.0", "equal_to = 1\nwithin = 1\nwithin_percent = 3", "require.1", "exactly one"),
     ],
 )
@@ -295,6 +296,7 @@ def test_all_mistakes_at_once_in_the_order_of_the_file(folder: Path, capsys: pyt
         (b"a = " + b"[" * 5000, ("TOML",)),
         (b"a = " + b"9" * 5000, ("TOML",)),
         (b"\x00", ("TOML",)),
+        (b"\x89HDF\r\n\x1a\n", ("HDF5", "text file")),
     ],
 )
 def test_files_that_are_no_toml(
@@ -319,6 +321,18 @@ def test_files_that_are_none(name: str, message: str, folder: Path, capsys: pyte
     assert run(["spec", "check", name]) == 2
     assert capsys.readouterr().err == f"{name}: {message}\n"
     assert sorted(folder.rglob("*")) == before
+
+
+def test_one_table_in_place_of_a_list_of_tables(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (line,) = [line for line in refused(capsys, folder, "[require]\nat_least = 1") if ": require: " in line]
+    assert line.startswith("s.toml:1: ")
+    assert "write [[require]], not [require]" in line
+
+
+def test_fields_apart_by_semicolons(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (folder / "p.csv").write_text("1;1\n", encoding="utf-8")
+    (line,) = refused(capsys, folder, HATCH.replace('symmetry = "half-turn"', 'pattern = "p.csv"'))
+    assert line.endswith('received "1;1"; separate fields by commas')
 
 
 def test_an_empty_file_lacks_everything(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:

@@ -60,6 +60,13 @@ def test_version(capsys: pytest.CaptureFixture[str]) -> None:
     assert capsys.readouterr().out == f"polewright, version {polewright.__version__}\n"
 
 
+def test_two_improves_are_valid_and_told(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    path = tmp_path / "s.toml"
+    path.write_text(SMALL + '[[improve]]\nquantity = "net_moment"\nsense = "minimize"\n', encoding="utf-8")
+    assert cli.run(["spec", "check", str(path)]) == 0
+    assert "note: polewright design takes at most one improve, this spec has 2" in capsys.readouterr().err
+
+
 @pytest.mark.parametrize(
     "arguments",
     [["nonsense"], ["spec", "chek"], ["spec", "check"], ["spec", "check", "a", "b"], ["spec", "check", "--no"]],

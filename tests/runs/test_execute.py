@@ -104,6 +104,14 @@ def test_fixed_cells_stay_in_every_design(tmp_path: Path) -> None:
     assert any(found.mover[1, 1] != 1 or found.mover[2, 2] != -1 for found in run.designs)
 
 
+def test_a_given_pattern_with_poles_under_the_width_is_told(tmp_path: Path) -> None:
+    (tmp_path / "fine.csv").write_text("1,-1,1,-1\n" * 4, encoding="utf-8")
+    given = 'pattern = "fine.csv"\npole_width_min_mm = 2.0'
+    run = execute(parse_spec(spec_text(4, cell=1.0, base=given), folder=tmp_path))
+    (told,) = [warning for warning in run.warnings if "given pattern" in warning]
+    assert told == "base and mover: the given pattern has poles of 1 mm, narrower than the 2 mm of pole_width_min_mm."
+
+
 def test_a_pole_width_that_nothing_keeps_is_refused() -> None:
     # two cells are narrower than a pole of three; so is a ring three cells wide at its diagonals for one of nine
     text = spec_text(6, cell=1.0, base="pole_width_min_mm = 3.0").replace("[6.0, 6.0]", "[6.0, 2.0]")

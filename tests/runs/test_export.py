@@ -12,10 +12,12 @@ from polewright.models.errors import InputError
 from polewright.runs.archive import write_run
 from polewright.runs.commands.export import command
 from polewright.runs.export import export_design, files_of
+from polewright.runs.records import Curve
 from polewright.runs.report.cautions import CAUTIONS
 from polewright.runs.spec.files import read_cells
 
 from .fixtures import make_run
+from .verified import require, spec_of
 
 NAMES = ["base.csv", "mover.csv", "force_gap.csv", "README.txt"]
 
@@ -45,7 +47,7 @@ def test_first_line_is_lowest_y() -> None:
     ("name", "phrases"),
     [
         ("base.csv", ("1 shows N", "3 mm without coating", "coating 20 um", "1 mm square", "rim 0.4 mm in x")),
-        ("mover.csv", ("1 shows S", "2 mm without coating", "first line at the top", "disc 18 x 18 mm")),
+        ("mover.csv", ("1 shows S", "2 mm without coating", "first line at the top", "disc of 18 mm diameter")),
     ],
 )
 def test_headers_say_what_a_shop_must_know(name: str, phrases: tuple[str, ...]) -> None:
@@ -69,6 +71,14 @@ def test_curves_carry_their_units_and_belong_to_the_design() -> None:
     table = np.array([line.split(",") for line in lines[1:]], float)
     np.testing.assert_allclose(table[:, 0], run.curves["force_gap"].scale * 1e3, rtol=1e-8)
     np.testing.assert_allclose(table[:, 1], run.curves["force_gap"].values[1], rtol=1e-8)
+
+
+def test_a_lateral_curve_says_where_it_was_taken() -> None:
+    run = make_run()
+    wish = require("slide_force", gap_mm=0.4, travel_mm=2.0, axis="y")
+    curves = run.curves | {"lateral": Curve("offset", np.zeros(1), "mm", np.zeros((3, 1)), "N")}
+    text = files_of(replace(run, spec_json=spec_of(wish).resolved_json(), curves=curves), run.designs[0])["README.txt"]
+    assert "lateral.csv     restoring force over the offset along (0, 1) at 0.4 mm gap" in text
 
 
 def test_the_readme_has_orientation_results_and_cautions() -> None:

@@ -120,7 +120,7 @@ def test_designs_are_found_by_id() -> None:
     run = make_run()
     assert find_design(run, None).id == "d1"
     assert find_design(run, "d3").id == "d3"
-    with pytest.raises(InputError, match="it holds d1, d2, d3"):
+    with pytest.raises(InputError, match="give one of d1, d2, d3"):
         find_design(run, "d9")
     with pytest.raises(InputError, match="no design"):
         find_design(replace(run, designs=()), None)

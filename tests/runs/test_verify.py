@@ -195,7 +195,7 @@ def test_command_refuses_bad_input(tmp_path: Path, capsys: pytest.CaptureFixture
     before = path.read_bytes()
     assert cli.run(["verify", str(path), "--design", "d9"]) == 2
     assert path.read_bytes() == before
-    assert "it holds d1" in capsys.readouterr().err
+    assert "give one of d1" in capsys.readouterr().err
 
 
 def test_interrupted_the_archive_stays_as_it_was(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:

@@ -67,6 +67,8 @@ def test_how_figures_of_the_scatter_were_found() -> None:
     assert "Figures of A and B come from interpolation" in of_two
     assert "Figures of C come from exact evaluation of the first 100 pairs" in exact
     assert "without limit" in exact
+    rows += [{"label": "D", "method": "does not change with tolerances", "error": 0.0}]
+    assert accuracy(rows)[-1] == "D: does not change with tolerances."
 
 
 def test_wrong_ways_that_say_the_same_are_one_and_dangers_come_first() -> None:
