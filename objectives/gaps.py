@@ -32,8 +32,15 @@ def crossings(curve: Curve, gaps: Array, values: Array) -> Array:
         if at_left == 0.0:
             found.append(left)
         elif at_left * at_right < 0.0:
-            found.append(brentq(lambda gap: float(curve(np.array([gap]))[0]), left, right, xtol=1e-9 * gaps[-1]))
+            # a force that cancels is rounding noise: computed anew, its sign at the ends could be another one
+            ends = {float(left): float(at_left), float(right): float(at_right)}
+            found.append(brentq(_between(curve, ends), left, right, xtol=1e-9 * gaps[-1]))
     return np.array(found)
+
+
+def _between(curve: Curve, ends: dict[float, float]) -> Callable[[float], float]:
+    """The curve at one gap, as sampled at its ``ends``."""
+    return lambda gap: ends[gap] if gap in ends else float(curve(np.array([gap]))[0])
 
 
 def extreme(curve: Curve, gaps: Array, values: Array) -> float:

@@ -189,7 +189,8 @@ class Problem:
             relative_margins(require.bound, values[n], CATALOGUE[require.quantity].unit).min(-1)
             for n, require in enumerate(self.requires)
         ]
-        return np.stack(each, axis=-1) if each else np.zeros((*values[0].shape[:-1], 0))
+        leading = values[0].shape[:-1] if values else ()
+        return np.stack(each, axis=-1) if each else np.zeros((*leading, 0))
 
     def _verdict(self, margins: Array, values: list[Array]) -> tuple[NDArray[np.bool_], Array, Array]:
         """Feasible, worst margin that counts, and score; shapes (...)."""

@@ -30,7 +30,7 @@ class Polish:
 
     def __init__(self, relaxed: Relaxed) -> None:
         self.relaxed = relaxed
-        self._variables, self._targets = moves(relaxed.layout)
+        self._variables, self._targets = moves(relaxed.layout, facing=True)
 
     def run(self, z: Array, steps: int, budget: Budget) -> Array:
         """Improve rounded variables z (n,) by up to ``steps`` moves; z must keep the pole width."""

@@ -38,7 +38,7 @@ _CROSSED = 4
 """One start in as many is a design with a window of another one."""
 _JUDGED, _JUDGED_SLOWLY = STARTS, 5
 """Designs of a stage that are judged exactly, best first by the search's own score: where rows suffice, or not."""
-_POLISHED = 3
+_POLISHED, _DISTURBED = 3, 4
 _POLISH_STEPS = 150
 _REFINED = 2
 _REFINE_EVERY = 4
@@ -125,7 +125,7 @@ class Stages:
             self.relaxed(random)
         if not self.problem.is_linear and number > 0:
             self._calibrate()
-            self.polish()
+            self.polish(random)
 
     def _wants_relaxed(self, number: int, age: int) -> bool:
         """Is it the turn of relaxed design in a problem that walks can search?
@@ -193,15 +193,7 @@ class Stages:
             rounded(layout.variables(*self.layout.patterns(c.z))) for c in self.pool.distinct(_PARENTS, self._island)
         ]
         starts = list(self._best_drawn(layout, random, fresh))
-        for n in range(STARTS - fresh):
-            z = known[min(int(random.exponential(_SPREAD)), len(known) - 1)]
-            if n % _CROSSED:
-                starts.append(perturbed(layout, z, random))
-                continue
-            other = known[int(random.integers(len(known)))]
-            # a design and its reverse are the same: take the one that is nearer
-            other = -other if self.problem.reverses and (other == z).mean() < 0.5 else other
-            starts.append(crossed(layout, z, other, random))
+        starts += [self._offspring(layout, known, n, random) for n in range(STARTS - fresh)]
         violation = np.geomspace(5.0, 50.0, STARTS)[random.permutation(STARTS)]
         found = tabu.run(np.stack(starts), random, self.budget, _WALK, _SOFTNESS, violation)
         self._add(np.stack([self._fine(z) for z in found]), "search")
@@ -219,10 +211,22 @@ class Stages:
         if best is not None:
             self._physics.calibrated(self.problem.overstated(*self.layout.patterns(best.z)))
 
-    def polish(self) -> None:
-        """Moves on any problem, judged by the physics itself."""
-        for candidate in self.pool.distinct(_POLISHED):
-            self.pool.add(self._polisher.run(candidate.z, _POLISH_STEPS, self.budget), "polish", self._island)
+    def polish(self, random: np.random.Generator) -> None:
+        """Moves on any problem, judged by the physics itself, from the best designs and from them disturbed or crossed."""
+        known = [candidate.z for candidate in self.pool.distinct(_POLISHED)]
+        disturbed = [self._offspring(self.layout, known, n, random) for n in range(_DISTURBED)]
+        for z in [*known, *(mended(self.layout, one) for one in disturbed)]:
+            self.pool.add(self._polisher.run(z, _POLISH_STEPS, self.budget), "polish", self._island)
+
+    def _offspring(self, layout: Layout, known: list[Array], number: int, random: np.random.Generator) -> Array:
+        """One of the known designs, the better the likelier: disturbed, or now and then crossed with another one."""
+        z = known[min(int(random.exponential(_SPREAD)), len(known) - 1)]
+        if number % _CROSSED:
+            return perturbed(layout, z, random)
+        other = known[int(random.integers(len(known)))]
+        # a design and its reverse are the same: take the one that is nearer
+        other = -other if self.problem.reverses and (other == z).mean() < 0.5 else other
+        return crossed(layout, z, other, random)
 
     def _fine(self, z: Array) -> Array:
         """Variables of the full layout for those of the coarse one."""

@@ -74,11 +74,15 @@ def _smoothed(layout: Layout, z: Array, level: int) -> Array:
     return layout.variables(blurred[0], blurred[1])
 
 
-def moves(layout: Layout) -> tuple[Index, Array]:
+def moves(layout: Layout, *, facing: bool = False) -> tuple[Index, Array]:
     """What a local search may set at once.
 
     At a pole width of one cell each variable alone; else windows one pole wide and one cell or a pole's width deep,
     each set to either polarity.
+
+    Args:
+        layout: What is free.
+        facing: Also windows that face each other, set on both parts at once to equal or to opposite polarities.
 
     Returns:
         Variables of each move (m, w), padded by -1, and the value each is set to (m, w).
@@ -91,6 +95,13 @@ def moves(layout: Layout) -> tuple[Index, Array]:
         for height, width in {(1, k), (k, 1), (k, k)}:
             for targets in _windows(face, height, width):
                 found.setdefault(targets)
+    if facing and not layout.linked and layout.base.index.shape == layout.mover.index.shape:
+        k = max(layout.brushes)
+        for height, width in {(1, k), (k, 1), (k, k)}:
+            pairs = zip(_windows(layout.base, height, width), _windows(layout.mover, height, width), strict=False)
+            for below, above in pairs:
+                found.setdefault(below + above)
+                found.setdefault(below + tuple((variable, -value) for variable, value in above))
     longest = max((len(targets) for targets in found), default=1)
     variables = np.full((len(found), longest), -1, dtype=np.intp)
     values = np.zeros((len(found), longest))

@@ -108,8 +108,7 @@ def alone(problem: Problem, found: Layout, member: str) -> float | None:
         if member == "walks" and tabu is not None:
             stages.walks(tabu, random, fresh=STARTS if number % 8 == 0 else 0)
         elif member == "polish":
-            stages.polish()
-            break
+            stages.polish(random)
         else:
             stages.relaxed(random, programs=member == "programs")
     return worth(pool)

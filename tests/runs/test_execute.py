@@ -104,6 +104,13 @@ def test_fixed_cells_stay_in_every_design(tmp_path: Path) -> None:
     assert any(found.mover[1, 1] != 1 or found.mover[2, 2] != -1 for found in run.designs)
 
 
+def test_given_patterns_without_a_wish_are_evaluated() -> None:
+    text = spec_text(base='pattern = "plain-N"', mover='pattern = "matched"', wishes="")
+    run = execute(parse_spec(text))
+    assert [found.feasible for found in run.designs] == [True]
+    assert (run.curves["force_gap"].values < 0.0).all()
+
+
 def test_a_given_pattern_with_poles_under_the_width_is_told(tmp_path: Path) -> None:
     (tmp_path / "fine.csv").write_text("1,-1,1,-1\n" * 4, encoding="utf-8")
     given = 'pattern = "fine.csv"\npole_width_min_mm = 2.0'
