@@ -212,7 +212,7 @@ class Stages:
             self._physics.calibrated(self.problem.overstated(*self.layout.patterns(best.z)))
 
     def polish(self, random: np.random.Generator) -> None:
-        """Moves on any problem, judged by the physics itself, from the best designs and from them disturbed or crossed."""
+        """Moves on any problem, judged by the physics itself, from the best designs, and from them disturbed or crossed."""
         known = [candidate.z for candidate in self.pool.distinct(_POLISHED)]
         disturbed = [self._offspring(self.layout, known, n, random) for n in range(_DISTURBED)]
         for z in [*known, *(mended(self.layout, one) for one in disturbed)]:
