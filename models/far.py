@@ -22,11 +22,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from .stray import Placed
+from .units import MU0
 
 Points = NDArray[np.float64]
-
-MU0 = 4e-7 * np.pi
-"""Magnetic constant [T m/A], the value before 2019, from which today's differs by 5e-10."""
 
 # A moment below this fraction of what the same cells could have together is rounding.
 _ROUNDING = 1e-9

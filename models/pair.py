@@ -20,10 +20,9 @@ from scipy import fft
 
 from .kernels.square import PARITY, sheet_kernels
 from .part import Part
+from .units import MU0
 
 Array = NDArray[np.float64]
-MU0 = 4e-7 * np.pi
-"""Vacuum permeability [T m/A] (its value before 2019, which every reference here uses)."""
 
 Component = Literal["energy", "fx", "fy", "fz", "kxx", "kyy", "kxy", "kzz", "mx", "my", "mz"]
 """Energy [J], force [N], derivative of the force [N/m] (kzz = dF_z/dgap, kxy = dF_x/dy), moment [N m]."""

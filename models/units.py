@@ -13,6 +13,9 @@ from numpy.typing import NDArray
 
 Number = TypeVar("Number", float, NDArray[np.float64])
 
+MU0 = 4e-7 * float(np.pi)
+"""Vacuum permeability [T m/A]: its value before 2019, which every reference here uses."""
+
 FACTORS: dict[str, float] = {
     "1": 1.0,
     "m": 1.0,

@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ..models.pair import Row
+from ..models.units import MU0
 from .case import Case
 from .gaps import FINE, crossings, extreme, gap_grid
 from .plan import Plan, Response
@@ -205,4 +206,4 @@ class PeakForce(Quantity):
 def _force_scale(plan: Plan) -> float:
     """Maxwell pull of the smaller face fully covered by one pole: Br_a Br_b A / (2 mu0) [N]."""
     area = min(plan.base.cells, plan.mover.cells) * plan.base.cell**2
-    return plan.base.remanence * plan.mover.remanence * area / (8e-7 * np.pi)
+    return plan.base.remanence * plan.mover.remanence * area / (2.0 * MU0)

@@ -13,9 +13,10 @@ from typing import Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from ..models.pair import MU0, Component, Row
+from ..models.pair import Component, Row
 from ..models.part import Part
 from ..models.stray import field_matrix
+from ..models.units import MU0
 from .sites import Source, seats
 
 Array = NDArray[np.float64]

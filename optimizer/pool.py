@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from ..models.symmetry import IMAGES
 from ..objectives.problem import Evaluation, Problem
 from .layout import Layout
 from .width import keeps_width
@@ -90,11 +91,26 @@ class Pool:
         for candidate in self.candidates:
             if island is not None and candidate.island != island:
                 continue
-            if all(self._distance(candidate.z, other.z) > apart for other in found):
+            if all(self._differ(candidate, other, apart) for other in found):
                 found.append(candidate)
             if len(found) == count:
                 break
         return found
+
+    def _differ(self, one: Candidate, other: Candidate, apart: float) -> bool:
+        """Are they more than ``apart`` from each other, and not each other's mirror image with equal numbers?"""
+        if self._distance(one.z, other.z) <= apart:
+            return False
+        if not np.allclose(one.evaluation.values, other.evaluation.values, rtol=1e-6, atol=0.0, equal_nan=True):
+            return True
+        mine, yours = self.layout.patterns(one.z), self.layout.patterns(other.z)
+        signs = (1.0, -1.0) if self.problem.reverses else (1.0,)
+        images = [image for name in ("half-turn", "quarter-turn", "even-x", "even-y") for image, _ in IMAGES[name]]
+        return not any(
+            all(np.array_equal(sign * image(a), b) for a, b in zip(mine, yours, strict=True))
+            for image in images
+            for sign in signs
+        )
 
     def _distance(self, one: Array, other: Array) -> float:
         """Variables that differ; both parts reversed together are the same design where nothing tells them apart."""

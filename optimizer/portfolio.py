@@ -6,7 +6,7 @@ far. So a run that was stopped continues at the last finished stage and ends as 
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -64,7 +64,6 @@ def search(
     budget: Budget,
     seed: int,
     starts: int,
-    given: Sequence[tuple[Array, Array]] = (),
     pool: Pool | None = None,
     progress: Progress | None = None,
     on_stage: Callable[[Pool, Progress], None] | None = None,
@@ -77,8 +76,7 @@ def search(
         budget: Evaluations, seconds and interrupt.
         seed: Seed of everything random.
         starts: Starts of the gradient search.
-        given: Patterns to begin from as well.
-        pool: Designs of an earlier part of the run.
+        pool: Designs to begin from: given ones, or those of an earlier part of the run.
         progress: Where that part stood.
         on_stage: Called after each finished stage, to keep what there is.
 
@@ -86,7 +84,7 @@ def search(
         The designs, where the run stands and why it ended; the pool holds at least one design.
     """
     pool, progress = pool or Pool(problem, layout), progress or Progress()
-    stages = Stages(problem, layout, budget, pool, starts, given)
+    stages = Stages(problem, layout, budget, pool, starts)
     if layout.count and exhaustive.fits(problem, layout, budget):
         found, complete = exhaustive.best(problem, layout, budget)
         for z in found:

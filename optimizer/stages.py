@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from functools import cached_property
 
 import numpy as np
@@ -65,21 +64,19 @@ class Stages:
         budget: Budget,
         pool: Pool,
         starts: int,
-        given: Sequence[tuple[Array, Array]],
     ) -> None:
         self.problem, self.layout, self.budget, self.pool = problem, layout, budget, pool
         self._starts = starts
-        self._given = [mended(layout, layout.variables(a, b)) if layout.count else np.zeros(0) for a, b in given]
         self._coarse = layout.coarse()
         self._island = 0
 
     def obvious(self) -> None:
-        """Judge what is given and the obvious patterns, so that a run never ends with nothing.
+        """Judge the obvious patterns, so that a run never ends with nothing.
 
         Raises:
             InputError: No pattern keeps the pole width under the symmetry and the given cells.
         """
-        found = list(self._given)
+        found: list[Array] = []
         faces = [
             [uniform(mask), *(make(mask, width) for make in (stripes, checker) for width in (brush, 2 * brush))]
             for mask, brush in zip(self.layout.masks, self.layout.brushes, strict=True)
@@ -88,8 +85,9 @@ class Stages:
             found += [mended(self.layout, self.layout.variables(a, sign * b)) for sign in (1.0, -1.0)]
         for z in found:
             if self.pool.best is None or self.budget.affords(1):
-                self.budget.spend(1)
+                known = len(self.pool.candidates)
                 self.pool.add(z, "given")
+                self.budget.spend(len(self.pool.candidates) - known)
         if self.pool.best is None:
             message = (
                 "no pattern found that keeps the pole width with this symmetry and the given cells; "
@@ -114,7 +112,8 @@ class Stages:
         if number == 0 and self.tabu is None:
             self.relaxed(random)
         elif self.tabu is not None and not self._wants_relaxed(number, age):
-            self.walks(self.tabu, random, fresh=STARTS if age == 0 else 0)
+            begins = age == 0 or self.pool.best_on(island) is None
+            self.walks(self.tabu, random, fresh=STARTS if begins else 0)
             if self._coarse is not self.layout and number % _REFINE_EVERY == 1:
                 self._refine(random)
         elif self.problem.is_linear:
@@ -140,7 +139,9 @@ class Stages:
         best = self.pool.best
         far = best is None or (not best.evaluation.feasible and best.evaluation.worst_margin < -_FAR)
         begins = age == 0 and self._island % 2 == 1 and (far or bool(self.problem.improves))
-        return begins or (number == 1 and far)
+        # one free part is a linear program: its optimum, rounded, is where walks should begin
+        program = number == 0 and not self.layout.linked and np.unique(self.layout.owner).size == 1
+        return begins or program or (number == 1 and far)
 
     # --- relaxed searches -------------------------------------------------------------------------------------------
 
@@ -212,7 +213,7 @@ class Stages:
             self._physics.calibrated(self.problem.overstated(*self.layout.patterns(best.z)))
 
     def polish(self, random: np.random.Generator) -> None:
-        """Moves on any problem, judged by the physics itself, from the best designs, and from them disturbed or crossed."""
+        """Moves on any problem, judged by the physics itself, from the best designs and from disturbed ones."""
         known = [candidate.z for candidate in self.pool.distinct(_POLISHED)]
         disturbed = [self._offspring(self.layout, known, n, random) for n in range(_DISTURBED)]
         for z in [*known, *(mended(self.layout, one) for one in disturbed)]:

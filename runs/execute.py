@@ -117,7 +117,7 @@ def execute(
     before = float(json.loads(earlier.provenance["durations_json"])["search_s"]) if earlier else 0.0
     given = [*(starts or []), *_start(spec, problem)]
     used = int(earlier.state["evaluations"][0]) if earlier else 0
-    if layout.count:
+    if layout.count and earlier is None:
         for a, b in given:
             pool.add(mended(layout, layout.variables(a, b)), "given")
     # a resume begins at the last finished stage; before the first one that is the beginning, with what is given
@@ -133,7 +133,7 @@ def execute(
                 keep(_run(spec, problem, pool, progress, budget, last, StopReason.INTERRUPTED, began))
 
         pool, progress, reason = search(
-            problem, layout, budget, spec.search.seed, spec.search.starts, given, pool, progress, on_stage
+            problem, layout, budget, spec.search.seed, spec.search.starts, pool, progress, on_stage
         )
     return _run(spec, problem, pool, progress, budget, last, reason, began)
 

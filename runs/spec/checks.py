@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator
 
 import numpy as np
@@ -12,13 +11,13 @@ from ...models.errors import InputError, Issue
 from ...models.material import REFERENCE_C, remanence_at
 from ...models.part import Part
 from ...models.symmetry import IMAGES
+from ...models.units import MU0
 from .document import Conditions, Search
 from .files import CellFile
 from .geometry import blank_of
 from .parts import AnyPart, MaterialSpec, RectanglePart, RingPart
 
 MOST_CELLS = 65_536
-MU0 = 4e-7 * math.pi
 # Data sheets round: a coercivity may stand this much above Br/mu0.
 _ROUNDING = 1.005
 

@@ -16,9 +16,9 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.interpolate import PchipInterpolator
 
-from ...models.pair import MU0
 from ...models.stray import Placed, field
 from ...models.surfaces import Surface
+from ...models.units import MU0
 from .asked import Asked
 from .draws import VARIABLES, Draws, state_of
 from .state import Source, State, exact_value, field_points, field_values

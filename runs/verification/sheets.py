@@ -19,8 +19,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ...models.kernels.square import FAR_SWITCH, sheet_kernels
-from ...models.pair import MU0, Row
+from ...models.pair import Row
 from ...models.second_path import correlation
+from ...models.units import MU0
 from .draws import Draws, thickness
 from .state import State
 

@@ -10,11 +10,12 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.optimize import brentq
 
-from ...models.pair import MU0, Row, pair_values
+from ...models.pair import Row, pair_values
 from ...models.part import Part
 from ...models.peak import field_reach, peak
 from ...models.stray import Placed, Seat, field, seat_base, seat_mover
 from ...models.surfaces import Surface, around, plane
+from ...models.units import MU0
 from ...objectives.case import Case, Measure
 from ...objectives.plan import Response
 from .asked import Asked

@@ -96,7 +96,7 @@ KINDS: dict[str, Callable[[], tuple[Problem, Layout]]] = {
 def alone(problem: Problem, found: Layout, member: str) -> float | None:
     """Best score that one member reaches within the seconds, None where it does not apply."""
     pool, budget = Pool(problem, found), Budget(PLENTY, SECONDS)
-    stages = Stages(problem, found, budget, pool, 32, ())
+    stages = Stages(problem, found, budget, pool, 32)
     tabu = stages.tabu
     if (member == "programs" and stages.programs is None) or (member == "walks" and tabu is None):
         return None

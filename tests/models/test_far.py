@@ -6,9 +6,10 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 from polewright.models.blank import Rectangle
-from polewright.models.far import MU0, far_field, leading_order, moments, net_moment
+from polewright.models.far import far_field, leading_order, moments, net_moment
 from polewright.models.part import Part
 from polewright.models.stray import Placed, field, place_base, place_mover
+from polewright.models.units import MU0
 
 from ..tolerances import worst
 from .parts import noise, ones, plate

@@ -6,11 +6,12 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 from polewright.models.blank import Blank, Disc, Polygon, Rectangle, Ring
-from polewright.models.far import MU0, net_moment
+from polewright.models.far import net_moment
 from polewright.models.part import Part
 from polewright.models.peak import field_reach, peak
 from polewright.models.stray import Located, Placed, Seat, field, place_base, place_mover, seat_base, seat_mover
 from polewright.models.surfaces import Flat, Surface, around, magnet_distance, plane
+from polewright.models.units import MU0
 from scipy import optimize
 
 from .parts import noise, ones, plate

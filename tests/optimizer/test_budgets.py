@@ -121,8 +121,9 @@ def test_a_start_that_is_best_is_kept() -> None:
     problem, found = near_far(part, part), both_free(part, part)
     better, _, _ = search(problem, found, Budget(900), seed=1, starts=STARTS)
     assert better.best is not None
-    known = found.patterns(better.best.z)
-    pool, _, _ = search(problem, found, Budget(1), seed=9, starts=STARTS, given=[known])
+    begun = Pool(problem, found)
+    begun.add(better.best.z, "given")
+    pool, _, _ = search(problem, found, Budget(1), seed=9, starts=STARTS, pool=begun)
     assert pool.best is not None
     assert pool.best.rank >= better.best.rank
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from numpy.typing import NDArray
-from polewright.models.pair import MU0
+from polewright.models.units import MU0
 from polewright.runs.records import Run
 from polewright.runs.resolve import parts
 from polewright.runs.spec import Spec
