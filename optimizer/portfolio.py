@@ -24,9 +24,9 @@ Array = NDArray[np.float64]
 
 _ROUNDS = 1000
 """More stages than any budget pays for; it only bounds a run whose stages book nothing."""
-_PATIENCE = {True: (8, 20), False: (3, 6)}
-"""Rounds without a gain that end a run whose best design meets every require, or does not: many where walks can search,
-which are cheap, few elsewhere."""
+_LINEAR, _CORE, _CURVED = (6, 20), (8, 20), (3, 6)
+"""Rounds without a gain that end a run whose best design meets every require, or does not: where all is linear, where
+walks can search a linear core, elsewhere. Rounds of walks are cheap."""
 _ISLAND_PATIENCE = 3
 """Rounds without a gain that end an island: a new population finds other basins sooner than an old one leaves its."""
 _GAIN = 1e-3
@@ -96,6 +96,7 @@ def search(
         stages.obvious()
     if layout.count == 0:
         return pool, progress, StopReason.GIVEN
+    patience = _LINEAR if problem.is_linear else _CORE if problem.has_linear_core else _CURVED
     while progress.stage < _ROUNDS:
         number = progress.stage
         stages.run(number, generator(seed, "stage", number), progress.island, progress.age)
@@ -107,7 +108,7 @@ def search(
         if on_stage is not None:
             on_stage(pool, progress)
         met = pool.best is not None and pool.best.evaluation.feasible
-        if progress.stale >= _PATIENCE[problem.has_linear_core][0 if met else 1]:
+        if progress.stale >= patience[0 if met else 1]:
             break
     return pool, progress, StopReason.PLATEAU
 
