@@ -44,7 +44,9 @@ _REFINE_EVERY = 4
 _LOCAL_STEPS = 250
 _PROGRAMS = 4
 _AMPLITUDE = 0.1
+"""Size of the latents that structured starts are given: small, so that the gradient may change them."""
 _FAR = 0.1
+"""A worst margin below minus this is far from being met."""
 
 
 class Stages:
