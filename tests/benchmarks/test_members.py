@@ -1,6 +1,6 @@
 """Which member of the portfolio wins on which kind of spec: each alone against all together, equal seconds, one run.
 
-The table that it prints stands in DEVELOPERS.md. Scores are the worst margin, or the worth of the improve where the
+The table that it prints stands in DEVELOPERS.md. Scores are the worst margin, or the improved force in N where the
 spec has one; every number is the best design's exact judgement.
 """
 
