@@ -44,7 +44,7 @@ def walk(readme: str, folder: Path) -> str:
     spec = SPEC.search(readme)
     if spec is None:
         raise SystemExit("README.md must hold a toml block")
-    (folder / "latch.toml").write_text(spec[1], encoding="utf-8")
+    (folder / "cassette.toml").write_text(spec[1], encoding="utf-8")
 
     seen: set[str] = set()
 
@@ -66,7 +66,7 @@ def main() -> None:
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         README.write_text(walk(README.read_text(encoding="utf-8"), folder), encoding="utf-8")
-        draw = [sys.executable, str(ROOT / ".ci" / "picture.py"), str(folder / "latch.h5")]
+        draw = [sys.executable, str(ROOT / ".ci" / "picture.py"), str(folder / "cassette.h5")]
         PICTURE.write_bytes(subprocess.run(draw, stdout=subprocess.PIPE, check=True).stdout)
 
 

@@ -155,9 +155,9 @@ def walk_commands() -> list[list[str]]:
 def test_checking_the_spec_prints_what_the_readme_shows(tmp_path: Path, monkeypatch: pytest.MonkeyPatch,
                                                         capsys: pytest.CaptureFixture[str]) -> None:  # fmt: skip
     monkeypatch.chdir(tmp_path)
-    Path("latch.toml").write_text(blocks(text_of("README.md"), "toml")[0], encoding="utf-8")
+    Path("cassette.toml").write_text(blocks(text_of("README.md"), "toml")[0], encoding="utf-8")
     block = next(block for block in blocks(text_of("README.md"), "console") if "spec check" in block)
-    assert run(["spec", "check", "latch.toml"]) == 0
+    assert run(["spec", "check", "cassette.toml"]) == 0
     assert capsys.readouterr().err.splitlines() == block.splitlines()[1:]
 
 
@@ -167,13 +167,13 @@ def test_the_walk_and_the_snippets_run(tmp_path: Path, monkeypatch: pytest.Monke
     pytest.importorskip("xarray")
     pytest.importorskip("h5netcdf")
     monkeypatch.chdir(tmp_path)
-    Path("latch.toml").write_text(SMALL, encoding="utf-8")
+    Path("cassette.toml").write_text(SMALL, encoding="utf-8")
     commands = walk_commands()
     assert [arguments[0] for arguments in commands] == ["spec", "design", "verify", "report", "export"]
     for arguments in commands:
         assert run(arguments) == 0, capsys.readouterr().err
-    assert Path("latch.html").exists()
-    assert Path("latch-d1", "base.csv").exists()
+    assert Path("cassette.html").exists()
+    assert Path("cassette-d1", "base.csv").exists()
     snippets = blocks(text_of("README.md"), "python")
     assert len(snippets) == 2
     capsys.readouterr()
@@ -183,7 +183,7 @@ def test_the_walk_and_the_snippets_run(tmp_path: Path, monkeypatch: pytest.Monke
     assert "d1 True" in printed
     assert "(2, 2)" in printed
     if PICTURE.exists():
-        drawn = runpy.run_path(str(PICTURE.with_name("picture.py")))["picture"](open_run(Path("latch.h5")))
+        drawn = runpy.run_path(str(PICTURE.with_name("picture.py")))["picture"](open_run(Path("cassette.h5")))
         assert ElementTree.fromstring(drawn).tag.endswith("svg")
 
 
