@@ -128,10 +128,13 @@ def _curve(run: Run, design: Design, extras: ReportExtras) -> str:
     position = [other.id for other in run.designs].index(design.id)
     band = ((verification_of(run, design) or {}).get("scatter") or {}).get("force_band")
     figure = force_gap_figure(curve, position, extras.marks, band)
+    force = curve.values[position]
+    floats = bool(((force[:-1] > 0.0) & (force[1:] <= 0.0)).any())
+    note = " Where the force falls through zero as the gap opens, the mover floats in axial balance, on a guide only."
     return (
         "<section>\n<h2>Force over the gap</h2>\n"
-        f'<figure class="plotbox">{figure}<figcaption>Mover centred over the base. Positive pushes apart. Where the '
-        "force falls through zero as the gap opens, the mover floats in axial balance, on a guide only.</figcaption>"
+        f'<figure class="plotbox">{figure}<figcaption>Mover centred over the base. Positive pushes apart.'
+        f"{note if floats else ''}</figcaption>"
         "</figure>\n</section>"
     )
 
